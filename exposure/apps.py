@@ -1,0 +1,6 @@
+from django.apps import AppConfig
+
+
+class ExposureConfig(AppConfig):
+    name = "exposure"
+    verbose_name = "Exposure"

@@ -1,0 +1,2 @@
+app_name = "exposure"
+urlpatterns: list = []

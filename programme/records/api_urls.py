@@ -1,0 +1,2 @@
+app_name = "api"
+urlpatterns: list = []

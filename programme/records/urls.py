@@ -1,0 +1,2 @@
+app_name = "records"
+urlpatterns: list = []

@@ -1,0 +1,53 @@
+"""What every template may use: the site, the role, the main navigation, the day."""
+
+from typing import Any
+
+from django.http import HttpRequest
+from django.urls import reverse
+
+from programme.roster.models import Role, Site
+from programme.roster.permissions import ACTS, may
+
+NAV = (
+    ("Today", "selection:today"),
+    ("Tasks", "selection:tasks"),
+    ("People", "roster:people"),
+    ("Samples", "exposure:samples"),
+    ("Fit tests", "fit:tests"),
+    ("Respirators", "equipment:respirators"),
+    ("Records", "records:records"),
+)
+
+
+def site_and_nav(request: HttpRequest) -> dict[str, Any]:
+    """`site`, `role_label`, `nav`, `on`, `today`, `sites` and `can` (act -> bool)."""
+    site = getattr(request, "site", None)
+    if site is None:
+        return {}
+    role = getattr(request, "role", None)
+    here = request.resolver_match.namespace if request.resolver_match else ""
+    view = request.resolver_match.view_name if request.resolver_match else ""
+    nav = []
+    for label, name in NAV:
+        app = name.split(":")[0]
+        is_here = view == name or (app == here and app != "selection")
+        if (
+            name == "selection:tasks"
+            and here == "selection"
+            and view != "selection:today"
+        ):
+            is_here = True
+        nav.append(
+            {"label": label, "url": reverse(name, args=[site.code]), "is_here": is_here}
+        )
+    return {
+        "site": site,
+        "role": role,
+        "role_label": Role(role).label if role else "",
+        "nav": nav,
+        "on": request.on,
+        "on_text": request.on_text,
+        "today": site.today(),
+        "sites": Site.objects.for_user(request.user),
+        "can": {act.replace(" ", "_"): may(role, act) for act in ACTS},
+    }
