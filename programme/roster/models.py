@@ -271,7 +271,7 @@ class Worker(models.Model):
         return f"{self.name} ({self.personnel_number})"
 
     def get_absolute_url(self) -> str:
-        return reverse("roster:worker", args=[self.site.code, self.pk])
+        return reverse("selection:person", args=[self.site.code, self.pk])
 
 
 class WorkerRecords(ReplaceableRows):
