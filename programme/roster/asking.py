@@ -1,0 +1,94 @@
+"""Forms that ask back, lists that sort and turn pages: what pages of several rooms share."""
+
+from collections.abc import Callable, Mapping, Sequence
+from dataclasses import dataclass
+from typing import Any, TypeVar
+
+from crispy_forms.helper import FormHelper
+from crispy_forms.layout import Layout, Submit
+from django import forms
+from django.core.paginator import Page, Paginator
+from django.http import HttpRequest
+
+ROWS_A_PAGE = 100
+Row = TypeVar("Row")
+
+
+class AskingForm(forms.Form):
+    """A form that may ask back: what is possible but unlikely is stored after a tick only."""
+
+    is_meant = forms.BooleanField(required=False, label="Yes, this is meant")
+
+    def set_layout(self, *parts: Any, submit: str) -> None:
+        """Lay out the form; the tick stands before the button once a question was asked."""
+        self.helper = FormHelper()
+        self.helper.layout = Layout(*parts, Submit("send", submit))
+        if self.is_bound and self.data.get(self.add_prefix("is_meant")):
+            self._show_tick()
+
+    def _show_tick(self) -> None:
+        if "is_meant" not in self.helper.layout.fields:
+            self.helper.layout.insert(len(self.helper.layout.fields) - 1, "is_meant")
+
+    def ask(self, field: str | None, question: str) -> None:
+        """Refuse for now and ask; a ticked box answers every question of the form."""
+        if not self.cleaned_data.get("is_meant"):
+            self.add_error(field, question)
+            self._show_tick()
+
+
+class ReasonForm(forms.Form):
+    """Why a record is withdrawn."""
+
+    reason = forms.CharField(
+        label="Reason",
+        max_length=1000,
+        widget=forms.Textarea(attrs={"rows": 2}),
+        help_text="kept with the record and in the ledger",
+    )
+
+    def __init__(self, *args: Any, submit: str = "Withdraw", **kwargs: Any) -> None:
+        super().__init__(*args, **kwargs)
+        self.helper = FormHelper()
+        self.helper.layout = Layout("reason", Submit("send", submit))
+
+
+@dataclass(frozen=True)
+class Head:
+    """One column head: what it sorts by, how it is sorted now, and what a click asks for."""
+
+    label: str
+    key: str = ""
+    now: str = ""
+    is_number: bool = False
+
+    @property
+    def aria_sort(self) -> str:
+        """The value of `aria-sort`."""
+        if not self.key or self.now.lstrip("-") != self.key:
+            return "none"
+        return "descending" if self.now.startswith("-") else "ascending"
+
+    @property
+    def sort_next(self) -> str:
+        """The value of `sort` that a click asks for."""
+        return f"-{self.key}" if self.now == self.key else self.key
+
+
+def sort_asked(request: HttpRequest, allowed: Mapping[str, Any], default: str) -> str:
+    """The sort key in `?sort=`, with "-" for downwards; `default` for any that is not allowed."""
+    asked = request.GET.get("sort", "")
+    return asked if asked.lstrip("-") in allowed and asked.count("-") < 2 else default
+
+
+def in_order(rows: Sequence[Row], sort: str, keys: Mapping[str, Callable[[Row], Any]]) -> list[Row]:
+    """The rows sorted by that key; what is not known (None) comes last either way."""
+    key = keys[sort.lstrip("-")]
+    known = [row for row in rows if key(row) is not None]
+    known.sort(key=key, reverse=sort.startswith("-"))
+    return known + [row for row in rows if key(row) is None]
+
+
+def page_asked(request: HttpRequest, rows: Any) -> Page:
+    """The page in `?page=`; the first for any that cannot be read, the last beyond the end."""
+    return Paginator(rows, ROWS_A_PAGE).get_page(request.GET.get("page"))

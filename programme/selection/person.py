@@ -1,0 +1,152 @@
+"""One person in sentences: what may they do, with what, until when, and on which papers."""
+
+from collections import defaultdict
+from collections.abc import Iterable
+from dataclasses import dataclass
+from datetime import date
+from typing import Any
+
+from django.db.models import Q
+
+from programme.equipment.models import FilterChange
+from programme.fit.models import FitTest
+from programme.ledger.models import Entry
+from programme.roster.models import Clearance, SealNote, Site, Training, Worker
+from programme.selection.assess import assess_site
+from programme.selection.chain import Chain, CrewVerdict, Mismatch
+
+STATES = {
+    "here": "works here",
+    "coming": "starts later",
+    "left": "no longer here",
+    "all": "everybody",
+}
+READINESS = {
+    "ready": "may start every task",
+    "some": "may start some tasks",
+    "none": "may start none",
+    "free": "on no task",
+}
+_ORDER = ("none", "some", "ready", "free")
+ASK = "Ask the programme administrator."
+HISTORY_ROWS = 60
+
+
+@dataclass
+class PersonRow:
+    """One line of the list: the worker and, over their tasks, what they may start."""
+
+    worker: Worker
+    may: int = 0
+    of: int = 0
+    good_until: date | None = None
+
+    @property
+    def ready(self) -> str:
+        """One of `READINESS`."""
+        if not self.of:
+            return "free"
+        if self.may == self.of:
+            return "ready"
+        return "some" if self.may else "none"
+
+    @property
+    def order(self) -> int:
+        return _ORDER.index(self.ready)
+
+    @property
+    def says(self) -> str:
+        return f"{self.may} of {self.of} tasks" if self.of else READINESS["free"]
+
+
+def people_rows(workers: Iterable[Worker], *, site: Site, on: date) -> list[PersonRow]:
+    """One row a worker; the whole site is judged once, whatever their number."""
+    rows = {worker.pk: PersonRow(worker) for worker in workers}
+    if not rows:
+        return []
+    for chain in assess_site(site, on=on):
+        for one in chain.crew:
+            row = rows.get(one.worker_id)
+            if row is None:
+                continue
+            row.of += 1
+            row.may += one.may_start
+            if one.may_start and one.good_until is not None:
+                row.good_until = min(row.good_until or one.good_until, one.good_until)
+    return list(rows.values())
+
+
+@dataclass(frozen=True)
+class Saying:
+    """One task of one person as the page prints it."""
+
+    chain: Chain
+    verdict: CrewVerdict
+    reasons: tuple[str, ...]
+    mends: tuple[Mismatch, ...]
+
+    @property
+    def may_start(self) -> bool:
+        return self.verdict.may_start
+
+    @property
+    def plans(self) -> tuple[str, ...]:
+        """What is due soon, where the work may go ahead."""
+        return tuple(m.says for m in self.mends if m.severity == "plan")
+
+
+def saying_of(chain: Chain, verdict: CrewVerdict, *, sees_medical: bool) -> Saying:
+    """The verdict in words for a reader who may, or may not, see what a clearance limits."""
+    if verdict.is_medical and not sees_medical:
+        return Saying(chain, verdict, () if verdict.may_start else (ASK,), ())
+    blocking = [m for m in verdict.mismatches if m.severity != "plan"]
+    reasons = [m.says for m in blocking]
+    if not verdict.may_start and not reasons:
+        broken = chain.first_break
+        reasons = [
+            f"The chain of {chain.task} breaks at {broken.name}; nobody may start."
+            if broken
+            else "It is not known why."
+        ]
+    return Saying(chain, verdict, tuple(reasons), verdict.mismatches)
+
+
+@dataclass(frozen=True)
+class Papers:
+    """What is on file of one person, newest first; records that no longer stand come along."""
+
+    clearances: list[Clearance]
+    trainings: list[Training]
+    seal_notes: list[SealNote]
+    fit_tests: list[FitTest]
+    changes: list[FilterChange]
+
+
+def papers_of(worker: Worker, *, on: date) -> Papers:
+    """All papers of the person, dated on or before that day."""
+    return Papers(
+        list(worker.clearances.filter(decided_on__lte=on)),
+        list(worker.trainings.filter(trained_on__lte=on)),
+        list(worker.seal_notes.filter(noted_on__lte=on)),
+        list(worker.fit_tests.filter(tested_on__lte=on).select_related("size__facepiece")),
+        list(
+            worker.filter_changes.in_force().select_related("assembly").order_by("-fitted_at")[:20]
+        ),
+    )
+
+
+def history_of(worker: Worker) -> list[Entry]:
+    """The ledger's entries on the person and their papers, newest first."""
+    papers: dict[str, list[Any]] = defaultdict(list)
+    papers[worker._meta.label_lower] = [worker.pk]
+    for relation in Worker._meta.related_objects:
+        model = relation.related_model
+        if relation.one_to_many and model._meta.app_label != "exposure":
+            keys = model._default_manager.filter(**{relation.field.name: worker})
+            papers[model._meta.label_lower] = list(keys.values_list("pk", flat=True))
+    subjects = Q()
+    for kind, keys in papers.items():
+        if keys:
+            subjects |= Q(subject_kind=kind, subject_id__in=[str(key) for key in keys])
+    rows = Entry.objects.filter(subjects, chain=worker.site.code)
+    return list(rows.order_by("-serial")[:HISTORY_ROWS])
