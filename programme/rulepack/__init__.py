@@ -1,0 +1,1 @@
+"""Law as data: what a jurisdiction requires, read from one file, each value with its source."""

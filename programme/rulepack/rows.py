@@ -1,0 +1,439 @@
+"""The rows of a rule pack: frozen, typed, each with the source it rests on and how sure that is.
+
+What a field may hold is written beside it (`allowed=`); the loader refuses anything else.
+"""
+
+from dataclasses import Field, dataclass, field
+from typing import Any
+
+SURE = ("verified", "computed", "memory")
+
+FAMILIES = ("air_purifying", "powered_air_purifying", "supplied_air", "scba")
+MODES = ("negative_pressure", "powered", "demand", "continuous_flow", "pressure_demand")
+TIGHT_INLETS = ("filtering_facepiece", "quarter_mask", "half_mask", "full_facepiece")
+INLETS = (*TIGHT_INLETS, "helmet_or_hood", "loose_fitting_facepiece", "suit")
+EYE_COVERING_INLETS = ("full_facepiece", "helmet_or_hood", "suit")
+METHODS = ("quantitative", "qualitative")
+OIL = ("no", "limited", "yes")
+
+
+def _one_of(*allowed: str) -> Any:
+    return field(metadata={"allowed": allowed})
+
+
+def _some_of(*allowed: str) -> Any:
+    return field(default=(), metadata={"allowed": allowed})
+
+
+def allowed_in(spec: "Field[Any]") -> tuple[str, ...]:
+    """The values a field may hold; empty if any value of its type will do."""
+    allowed: tuple[str, ...] = spec.metadata.get("allowed", ())
+    return allowed
+
+
+@dataclass(frozen=True, kw_only=True)
+class Row:
+    """What every row carries: the clause or page it rests on, and how sure that is.
+
+    Attributes:
+        source: citation, fit to be printed.
+        sure: "verified" (read in the cited text), "computed" (derived from it) or "memory"
+            (recalled, to be confirmed).
+        note: what a reader should know besides.
+    """
+
+    source: str
+    sure: str = _one_of(*SURE)
+    note: str = ""
+
+    @property
+    def is_unconfirmed(self) -> bool:
+        """Whether the row is recalled rather than read: to be shown as such wherever it is used."""
+        return self.sure == "memory"
+
+
+@dataclass(frozen=True, kw_only=True)
+class RespiratorClass(Row):
+    """One class of respirator and the protection it is assigned.
+
+    Attributes:
+        elements: the element classes the assigned factor holds for, e.g. "P3" or "gas+P3";
+            empty if the factor does not depend on the element.
+        apf_with_maker_evidence: factor where the maker's study is on file, or None.
+        apf_particulate_only: factor against particles alone, where it is higher, or None;
+            its own mark is `apf_particulate_only_sure`.
+        idlh: permitted where the air is immediately dangerous to life or health.
+        has_auxiliary_supply: carries its own air for the way out.
+    """
+
+    id: str
+    name: str
+    family: str = _one_of(*FAMILIES)
+    mode: str = _one_of(*MODES)
+    inlet: str = _one_of(*INLETS)
+    apf: int
+    apf_with_maker_evidence: int | None = None
+    apf_particulate_only: int | None = None
+    apf_particulate_only_sure: str = field(default="", metadata={"allowed": ("", *SURE)})
+    elements: tuple[str, ...] = ()
+    idlh: bool = False
+    has_auxiliary_supply: bool = False
+
+    @property
+    def is_tight(self) -> bool:
+        """Seals against the face, so it needs a fit test and a shaven seal."""
+        return self.inlet in TIGHT_INLETS
+
+    @property
+    def covers_eyes(self) -> bool:
+        """Keeps the air from the eyes; a loose-fitting facepiece is not counted as doing so."""
+        return self.inlet in EYE_COVERING_INLETS
+
+    @property
+    def is_air_purifying(self) -> bool:
+        """Cleans the air around the wearer, powered or not; brings no oxygen."""
+        return self.family in {"air_purifying", "powered_air_purifying"}
+
+    @property
+    def is_negative_pressure(self) -> bool:
+        """The wearer draws the air in, so the pressure inside falls below that outside."""
+        return self.mode in {"negative_pressure", "demand"}
+
+    def apf_when(self, *, has_maker_evidence: bool, is_particulate_only: bool = False) -> int:
+        """The factor that holds for this assembly: the printed one unless a condition raises it."""
+        factors = [self.apf]
+        if has_maker_evidence and self.apf_with_maker_evidence is not None:
+            factors.append(self.apf_with_maker_evidence)
+        if is_particulate_only and self.apf_particulate_only is not None:
+            factors.append(self.apf_particulate_only)
+        return max(factors)
+
+    def takes_element(self, particulate_class: str, *, has_gas: bool) -> bool:
+        """Whether the factor holds with an element of that particulate class, gas part or both.
+
+        Args:
+            particulate_class: class of the pack, "" if the element filters no particles.
+            has_gas: whether the element takes up gases or vapours.
+        """
+        parts = (["gas"] if has_gas else []) + ([particulate_class] if particulate_class else [])
+        return not self.elements or "+".join(parts) in self.elements
+
+
+@dataclass(frozen=True, kw_only=True)
+class ParticulateFilter(Row):
+    """One class of particulate filter.
+
+    Attributes:
+        series: what the use limits are written for, e.g. "N".
+        efficiency_min: least efficiency in its certification test, 0 to 1.
+        oil: "no" (never with oil aerosol), "limited" (for a limited time) or "yes".
+        oil_sure: the mark of `oil` where it differs from the row's; else "".
+        rank: for comparing within one pack, higher is better.
+    """
+
+    id: str
+    series: str
+    efficiency_min: float
+    oil: str = _one_of(*OIL)
+    oil_sure: str = field(default="", metadata={"allowed": ("", *SURE)})
+    rank: int
+    hepa_equivalent: bool
+    colour: str = ""
+
+
+@dataclass(frozen=True, kw_only=True)
+class GasElement(Row):
+    """One type of gas or vapour cartridge, canister or filter.
+
+    Attributes:
+        covers: codes of need, as agents carry them, that this type answers.
+        agents: CAS numbers it is made for, whatever their need.
+        label_must_name_agent: the approval label has to name the very gas.
+        classed: comes in capacity classes, each with its ceiling.
+        includes_particulate: particulate class it always carries, or "".
+    """
+
+    id: str
+    name: str
+    colour: str
+    covers: tuple[str, ...] = ()
+    agents: tuple[str, ...] = ()
+    label_must_name_agent: bool = False
+    classed: bool = False
+    includes_particulate: str = ""
+    is_single_use: bool = False
+    max_hours: float | None = None
+
+
+@dataclass(frozen=True, kw_only=True)
+class GasClass(Row):
+    """A capacity class of gas filters and the highest concentration it may meet."""
+
+    number: int
+    max_ppm: float
+
+
+@dataclass(frozen=True, kw_only=True)
+class MaxUse(Row):
+    """The highest concentration in which an element may be used for one agent (or any: cas "")."""
+
+    elements: tuple[str, ...]
+    cas: str = ""
+    max_ppm: float
+
+
+@dataclass(frozen=True, kw_only=True)
+class NotForCartridge(Row):
+    """Agents that an air-purifying element does not hold, with the exceptions there are.
+
+    Attributes:
+        except_elements: gas elements made for it all the same.
+        allowed_with_schedule: an element will do if a change schedule from objective data exists.
+    """
+
+    name: str
+    cas: tuple[str, ...]
+    reason: str
+    except_elements: tuple[str, ...] = ()
+    allowed_with_schedule: bool = False
+
+
+@dataclass(frozen=True, kw_only=True)
+class PassLevel(Row):
+    """What a fit test must reach on one kind of facepiece by one method.
+
+    Attributes:
+        allowed: whether the method may be used on this kind at all.
+        min_fit_factor: least overall fit factor; None where the method gives no figure.
+        each_exercise_must_pass: every exercise has to reach it, not only the overall figure.
+        apf_cap: the assigned factor a pass is good for at most, or None.
+        apf_cap_families: respirator families to which the cap applies.
+    """
+
+    facepiece: str = _one_of(*TIGHT_INLETS)
+    method: str = _one_of(*METHODS)
+    allowed: bool
+    min_fit_factor: float | None
+    each_exercise_must_pass: bool
+    apf_cap: int | None = None
+    apf_cap_families: tuple[str, ...] = _some_of(*FAMILIES)
+
+    def cap_for(self, respirator: RespiratorClass) -> int | None:
+        """The cap that a pass by this method puts on that class, or None."""
+        return self.apf_cap if respirator.family in self.apf_cap_families else None
+
+
+@dataclass(frozen=True, kw_only=True)
+class Exercise:
+    """One exercise of a protocol.
+
+    Attributes:
+        seconds: how long; None where the protocol fixes no time.
+        counted: enters the overall fit factor.
+        readings: how many figures it yields (0: nothing is measured).
+    """
+
+    id: str
+    name: str
+    seconds: int | None
+    counted: bool
+    readings: int = 1
+    how: str = ""
+
+
+@dataclass(frozen=True, kw_only=True)
+class Protocol(Row):
+    """A fit test protocol: which facepieces, which exercises in which order."""
+
+    id: str
+    name: str
+    method: str = _one_of(*METHODS)
+    applies_to: tuple[str, ...] = _some_of(*TIGHT_INLETS)
+    exercises: tuple[Exercise, ...]
+    needs: str = ""
+
+    @property
+    def is_quantitative(self) -> bool:
+        return self.method == "quantitative"
+
+    @property
+    def counted_exercises(self) -> tuple[Exercise, ...]:
+        """The exercises whose figures enter the overall fit factor."""
+        return tuple(one for one in self.exercises if one.counted)
+
+    @property
+    def total_seconds(self) -> int | None:
+        """Time of all exercises, or None where the protocol does not fix every one."""
+        times = [one.seconds for one in self.exercises]
+        return None if None in times else sum(one or 0 for one in times)
+
+
+@dataclass(frozen=True, kw_only=True)
+class Interval(Row):
+    """How long something stays good, in calendar months; None: no fixed time."""
+
+    id: str
+    months: int | None
+    rule: str
+
+
+@dataclass(frozen=True, kw_only=True)
+class Retention(Row):
+    """How long a kind of record is kept: years, or None where an event ends it."""
+
+    id: str
+    years: int | None
+    rule: str
+
+
+@dataclass(frozen=True, kw_only=True)
+class AltitudeBand(Row):
+    """Oxygen band in which any atmosphere-supplying respirator will do, up to an altitude."""
+
+    above_ft: int
+    up_to_ft: int
+    oxygen_min_percent: float
+    oxygen_max_percent: float
+
+
+@dataclass(frozen=True, kw_only=True)
+class Oxygen(Row):
+    """Least oxygen for air-purifying respirators, and what altitude allows below it."""
+
+    min_percent: float
+    altitude_bands: tuple[AltitudeBand, ...] = ()
+    enriched_air_above_ft: int | None = None
+
+
+@dataclass(frozen=True, kw_only=True)
+class Idlh(Row):
+    """Rules for air that is immediately dangerous to life or health."""
+
+    unknown_is_idlh: bool
+    service_life_min: int | None
+
+
+@dataclass(frozen=True, kw_only=True)
+class RankRule(Row):
+    """The lowest rank of particulate filter that a substance allows."""
+
+    rank_min: int
+
+
+@dataclass(frozen=True, kw_only=True)
+class InletRule(Row):
+    """Inlets barred for a substance."""
+
+    barred: tuple[str, ...] = _some_of(*INLETS)
+
+
+@dataclass(frozen=True, kw_only=True)
+class BarRule(Row):
+    """Something a substance rules out, and why."""
+
+    reason: str
+
+
+@dataclass(frozen=True, kw_only=True)
+class EyeRule(Row):
+    """The eyes have to be covered: always, or only where the air irritates them.
+
+    Attributes:
+        goggles_suffice: a half mask will do together with gas-proof goggles.
+    """
+
+    only_if_irritating: bool
+    goggles_suffice: bool = False
+
+
+@dataclass(frozen=True, kw_only=True)
+class ExtendedShiftRule(Row):
+    """Above `above_h` the limit is `numerator_ug_m3_h` divided by the hours worked that day."""
+
+    above_h: float
+    numerator_ug_m3_h: float
+
+    def limit_ug_m3(self, shift_h: float) -> float | None:
+        """The shift's own limit in ug/m3, or None while the printed limit rules."""
+        return self.numerator_ug_m3_h / shift_h if shift_h > self.above_h else None
+
+
+@dataclass(frozen=True, kw_only=True)
+class ShiftRule(Row):
+    """The element is replaced at the latest with the shift.
+
+    Attributes:
+        esli_extends: an end-of-service-life indicator may carry it further.
+    """
+
+    esli_extends: bool = False
+
+
+@dataclass(frozen=True, kw_only=True)
+class ElementHours(Row):
+    """A row of a substance's own table: up to that level, these classes and element hours.
+
+    Attributes:
+        max_ppm: top of the row.
+        hours: replace an element after so long; None where no element is used.
+        classes: respirator classes the row lists; those of a higher row will do as well.
+    """
+
+    max_ppm: float
+    hours: float | None
+    classes: tuple[str, ...]
+
+
+@dataclass(frozen=True, kw_only=True)
+class Substance:
+    """What the law adds for one substance; every part has its own source and mark."""
+
+    id: str
+    name: str
+    cas: tuple[str, ...]
+    particulate_rank: RankRule | None = None
+    inlets: InletRule | None = None
+    air_purifying: BarRule | None = None
+    eyes: EyeRule | None = None
+    extended_shift: ExtendedShiftRule | None = None
+    change_each_shift: ShiftRule | None = None
+    element_hours: tuple[ElementHours, ...] = ()
+
+    def hours_at(self, ppm: float) -> ElementHours | None:
+        """The lowest row of the substance's table that covers `ppm`; None if none does."""
+        rows = sorted(self.element_hours, key=lambda row: row.max_ppm)
+        return next((row for row in rows if ppm <= row.max_ppm), None)
+
+
+@dataclass(frozen=True, kw_only=True)
+class FilterUseLimit(Row):
+    """How long a particulate filter series may be used, with or without oil aerosol.
+
+    Attributes:
+        hours: of use; None where no time is fixed.
+        days: since first use, whichever comes first; None where none is fixed.
+        loading_mg: mass on one filter; None where none is fixed.
+    """
+
+    series: str
+    oil: bool
+    hours: float | None = None
+    days: int | None = None
+    loading_mg: float | None = None
+    rule: str
+
+
+@dataclass(frozen=True, kw_only=True)
+class Clause(Row):
+    """A requirement by topic: what it asks in our words; `source` is the citation."""
+
+    code: str
+    rule: str
+
+
+@dataclass(frozen=True, kw_only=True)
+class Pending(Row):
+    """A change of the law under way, to be checked before relying on the pack."""
+
+    topic: str
+    effect: str
