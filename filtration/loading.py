@@ -27,6 +27,13 @@ from typing import Final
 import numpy as np
 from numpy.typing import ArrayLike
 
+from filtration.ageing import (
+    WorstLoad,
+    bergman_pressure_drop_pa,
+    electret_penetration,
+    electret_worst,
+    mechanical_penetration,
+)
 from filtration.cake import CAKE_RESISTANCE, CakeResistance
 from filtration.leak import Seal, solve
 from filtration.require import Floats, plain, require
@@ -36,9 +43,14 @@ __all__ = [
     "CakeResistance",
     "DepthStage",
     "ParticleFilter",
+    "WorstLoad",
+    "bergman_pressure_drop_pa",
+    "electret_penetration",
+    "electret_worst",
     "mass_behind_seal_kg",
     "mass_collected_kg",
     "mass_to_limit_kg",
+    "mechanical_penetration",
     "pressure_drop_pa",
     "resistance_pa_s_m3",
     "time_behind_seal_s",
