@@ -1,4 +1,4 @@
-"""What may be done to fit tests: record, correct by replacement, withdraw; one at a time or many."""
+"""What may be done to fit tests: record, correct by replacement, withdraw; one or many."""
 
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass

@@ -1,4 +1,4 @@
-"""What is typed of a fit test: exactly the figures its protocol asks for, and where they came from."""
+"""What is typed of a fit test: exactly the figures of its protocol, and where they came from."""
 
 from collections.abc import Iterable
 from dataclasses import dataclass

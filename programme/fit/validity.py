@@ -58,7 +58,7 @@ class Validity:
 
 
 def validity_of(test: FitTest, *, pack: RulePack, on: date) -> Validity:
-    """Until when the test counts by its date alone; assignments and the face are judged elsewhere."""
+    """Until when the test counts by its date alone; the face is judged elsewhere."""
     if test.outcome != FitTest.Outcome.PASSED or not test.stands:
         return Validity("counts for nothing", None, "")
     site = test.worker.site

@@ -1,4 +1,4 @@
-"""Pages that change people; the list and the person's page judge, so programme.selection has them."""
+"""Pages that change people; those that judge a person are in programme.selection."""
 
 from django.urls import path
 
