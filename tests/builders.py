@@ -46,9 +46,7 @@ def _number() -> int:
 def make_site(code: str = "north", rule_pack: str = "us-2026-1", **fields: Any) -> Site:
     """The site of that code, made if it is not there yet."""
     fields.setdefault("name", f"{code.capitalize()} works")
-    site, _ = Site.objects.get_or_create(
-        code=code, defaults={"rule_pack": rule_pack, **fields}
-    )
+    site, _ = Site.objects.get_or_create(code=code, defaults={"rule_pack": rule_pack, **fields})
     return site
 
 
@@ -66,9 +64,7 @@ def make_user(
 def client_for(user: User) -> Client:
     """A browser in which that user is signed in."""
     client = Client()
-    client.force_login(
-        user, backend="allauth.account.auth_backends.AuthenticationBackend"
-    )
+    client.force_login(user, backend="allauth.account.auth_backends.AuthenticationBackend")
     return client
 
 
@@ -116,9 +112,7 @@ def make_limit(agent: Agent, value: float = 0.05, **fields: Any) -> ExposureLimi
         "source": "invented for a test",
         "sure": "site",
     }
-    return ExposureLimit.objects.create(
-        agent=agent, value=value, **{**defaults, **fields}
-    )
+    return ExposureLimit.objects.create(agent=agent, value=value, **{**defaults, **fields})
 
 
 def make_task(site: Site | None = None, name: str = "Relining", **fields: Any) -> Task:
@@ -135,9 +129,7 @@ def make_task_agent(
 ) -> TaskAgent:
     fields.setdefault("form", TaskAgent.Form.PARTICULATE)
     fields.setdefault("fraction", "respirable")
-    return TaskAgent.objects.create(
-        task=task or make_task(), agent=agent or make_agent(), **fields
-    )
+    return TaskAgent.objects.create(task=task or make_task(), agent=agent or make_agent(), **fields)
 
 
 def make_sample(
@@ -212,9 +204,7 @@ def make_filter_change(
 ) -> FilterChange:
     if not isinstance(at, datetime):
         at = datetime.combine(at, time(6), tzinfo=UTC)
-    return FilterChange.objects.create(
-        worker=worker, assembly=assembly, fitted_at=at, **fields
-    )
+    return FilterChange.objects.create(worker=worker, assembly=assembly, fitted_at=at, **fields)
 
 
 def make_fit_test(
@@ -241,25 +231,17 @@ def make_fit_test(
         "tester": "F. Tester",
         "fingerprint": uuid.uuid4().hex,
     }
-    test = FitTest.objects.create(
-        worker=worker, size=size, tested_on=on, **{**defaults, **fields}
-    )
+    test = FitTest.objects.create(worker=worker, size=size, tested_on=on, **{**defaults, **fields})
     FitExercise.objects.bulk_create(
-        FitExercise(
-            test=test, order=order, exercise=f"exercise {order}", fit_factor=figure
-        )
+        FitExercise(test=test, order=order, exercise=f"exercise {order}", fit_factor=figure)
         for order, figure in enumerate(fit_factors, start=1)
     )
     return test
 
 
-def assign(
-    task: Task, assembly: Assembly, since: date = SINCE, **fields: Any
-) -> TaskAssembly:
+def assign(task: Task, assembly: Assembly, since: date = SINCE, **fields: Any) -> TaskAssembly:
     """Assign the assembly to the task."""
-    return TaskAssembly.objects.create(
-        task=task, assembly=assembly, active_from=since, **fields
-    )
+    return TaskAssembly.objects.create(task=task, assembly=assembly, active_from=since, **fields)
 
 
 def make_crew(
