@@ -54,9 +54,11 @@ class AgentForm(KeepingForm):
         required=False, max_length=1000, label="Remarks", widget=forms.Textarea(attrs={"rows": 2})
     )
 
-    def __init__(self, *args: Any, site: Site, needs: tuple[str, ...], **kwargs: Any) -> None:
+    def __init__(
+        self, *args: Any, site: Site, needs: tuple[str, ...], scheme: str, **kwargs: Any
+    ) -> None:
         super().__init__(*args, **kwargs)
-        self.site = site
+        self.site, self.scheme = site, scheme
         self.fields["filter_need"].choices = [(one, one) for one in needs]  # type: ignore[attr-defined]
         names = [name for name in self.fields if name not in {"is_meant", "asked"}]
         self.set_layout(*names, submit="Add agent")
@@ -98,8 +100,7 @@ class AgentForm(KeepingForm):
         more = ("eye_irritant", "skin_notation", "is_oil_aerosol", "source", "remarks")
         return Agent(
             key=found["cas"] or f"NOCAS-{slug or 'AGENT'}",
-            us_filter_need=need,
-            en_filter_need=need,
+            **{f"{self.scheme}_filter_need": need},
             **{name: found[name] for name in (*plain, *more)},
         )
 
