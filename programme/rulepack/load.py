@@ -1,4 +1,4 @@
-"""Read a rule pack from its file, strictly: an unknown key or a missing mark refuses the whole pack.
+"""Read a rule pack from its file, strictly: one unknown key or missing mark refuses it all.
 
 A message names the file, the place in it, what was met and what is allowed.
 """
@@ -23,12 +23,12 @@ NEVER_EMPTY = {"source", "id", "code", "name", "rule"}
 T = TypeVar("T")
 
 
-class RulePackRefused(ValueError):
+class RulePackError(ValueError):
     """A rule pack file that does not say what a rule pack has to say."""
 
 
-def _refuse(where: str, value: object, allowed: str) -> RulePackRefused:
-    return RulePackRefused(f"{where}: {value!r}; {allowed}")
+def _refuse(where: str, value: object, allowed: str) -> RulePackError:
+    return RulePackError(f"{where}: {value!r}; {allowed}")
 
 
 def _number(value: object, kind: type, where: str) -> Any:
@@ -87,7 +87,7 @@ def _row(value: object, kind: type[T], where: str) -> T:
             raise _refuse(f"{where}.{key}", value[key], f"keys are {', '.join(specs)}")
     for name, spec in specs.items():
         if name not in value and _is_required(spec):
-            raise RulePackRefused(f"{where}.{name}: missing; every such row must give it")
+            raise RulePackError(f"{where}.{name}: missing; every such row must give it")
         if name in NEVER_EMPTY and value.get(name, "given") == "":
             raise _refuse(f"{where}.{name}", "", "it must not be empty")
     return kind(
@@ -143,6 +143,8 @@ def _check_references(pack: RulePack, where: str) -> None:
         _known(f"{where}.gas_elements[{gas.id}].covers", gas.covers, pack.gas_needs)
     for use in pack.max_use:
         _known(f"{where}.max_use.elements", use.elements, elements)
+    ordinary = pack.low_boiling.ordinary_elements
+    _known(f"{where}.low_boiling.ordinary_elements", ordinary, elements)
     for agent in pack.not_for_cartridge:
         _known(f"{where}.not_for_cartridge.except_elements", agent.except_elements, elements)
     for substance in pack.substances:
@@ -168,7 +170,7 @@ def _read(text: str, where: str) -> dict[str, Any]:
     try:
         found = yaml.safe_load(text)
     except yaml.YAMLError as error:
-        raise RulePackRefused(f"{where}: not readable as YAML; {error}") from error
+        raise RulePackError(f"{where}: not readable as YAML; {error}") from error
     if not isinstance(found, dict):
         raise _refuse(where, type(found).__name__, "a rule pack is a mapping")
     return found
@@ -182,7 +184,7 @@ def parse(text: str, *, name: str) -> RulePack:
         name: name of the pack, for messages and for `RulePack.name`.
 
     Raises:
-        RulePackRefused: a key is unknown or missing, or a value is not allowed.
+        RulePackError: a key is unknown or missing, or a value is not allowed.
     """
     found = _read(text, name)
     if "name" in found:
@@ -206,7 +208,7 @@ def load(name: str) -> RulePack:
 
     Raises:
         ValueError: there is no such pack (the message lists those there are).
-        RulePackRefused: its file is not a proper rule pack.
+        RulePackError: its file is not a proper rule pack.
     """
     if name not in _names():
         raise ValueError(f"rule pack: {name!r}; it must be one of {', '.join(_names())}")

@@ -14,6 +14,7 @@ from programme.rulepack.rows import (
     GasElement,
     Idlh,
     Interval,
+    LowBoiling,
     MaxUse,
     NotForCartridge,
     Oxygen,
@@ -23,8 +24,8 @@ from programme.rulepack.rows import (
     Protocol,
     RespiratorClass,
     Retention,
-    Substance,
 )
+from programme.rulepack.substance import Substance
 
 
 class _Named(Shape):
@@ -82,6 +83,7 @@ class RulePack:
     particulate_filters: tuple[ParticulateFilter, ...]
     gas_elements: tuple[GasElement, ...]
     gas_classes: tuple[GasClass, ...]
+    low_boiling: LowBoiling
     max_use: tuple[MaxUse, ...]
     not_for_cartridge: tuple[NotForCartridge, ...]
     pass_levels: tuple[PassLevel, ...]

@@ -17,11 +17,13 @@ METHODS = ("quantitative", "qualitative")
 OIL = ("no", "limited", "yes")
 
 
-def _one_of(*allowed: str) -> Any:
+def one_of(*allowed: str) -> Any:
+    """A required field that holds one of these."""
     return field(metadata={"allowed": allowed})
 
 
-def _some_of(*allowed: str) -> Any:
+def some_of(*allowed: str) -> Any:
+    """A field that holds any number of these, none if not given."""
     return field(default=(), metadata={"allowed": allowed})
 
 
@@ -43,7 +45,7 @@ class Row:
     """
 
     source: str
-    sure: str = _one_of(*SURE)
+    sure: str = one_of(*SURE)
     note: str = ""
 
     @property
@@ -68,9 +70,9 @@ class RespiratorClass(Row):
 
     id: str
     name: str
-    family: str = _one_of(*FAMILIES)
-    mode: str = _one_of(*MODES)
-    inlet: str = _one_of(*INLETS)
+    family: str = one_of(*FAMILIES)
+    mode: str = one_of(*MODES)
+    inlet: str = one_of(*INLETS)
     apf: int
     apf_with_maker_evidence: int | None = None
     apf_particulate_only: int | None = None
@@ -134,7 +136,7 @@ class ParticulateFilter(Row):
     id: str
     series: str
     efficiency_min: float
-    oil: str = _one_of(*OIL)
+    oil: str = one_of(*OIL)
     oil_sure: str = field(default="", metadata={"allowed": ("", *SURE)})
     rank: int
     hepa_equivalent: bool
@@ -174,6 +176,19 @@ class GasClass(Row):
 
 
 @dataclass(frozen=True, kw_only=True)
+class LowBoiling(Row):
+    """Vapours boiling at or below a point break through ordinary organic-vapour elements early.
+
+    Attributes:
+        boiling_point_c: degrees Celsius at 101.3 kPa.
+        ordinary_elements: the elements that are not made for such vapours.
+    """
+
+    boiling_point_c: float
+    ordinary_elements: tuple[str, ...]
+
+
+@dataclass(frozen=True, kw_only=True)
 class MaxUse(Row):
     """The highest concentration in which an element may be used for one agent (or any: cas "")."""
 
@@ -210,13 +225,13 @@ class PassLevel(Row):
         apf_cap_families: respirator families to which the cap applies.
     """
 
-    facepiece: str = _one_of(*TIGHT_INLETS)
-    method: str = _one_of(*METHODS)
+    facepiece: str = one_of(*TIGHT_INLETS)
+    method: str = one_of(*METHODS)
     allowed: bool
     min_fit_factor: float | None
     each_exercise_must_pass: bool
     apf_cap: int | None = None
-    apf_cap_families: tuple[str, ...] = _some_of(*FAMILIES)
+    apf_cap_families: tuple[str, ...] = some_of(*FAMILIES)
 
     def cap_for(self, respirator: RespiratorClass) -> int | None:
         """The cap that a pass by this method puts on that class, or None."""
@@ -247,8 +262,8 @@ class Protocol(Row):
 
     id: str
     name: str
-    method: str = _one_of(*METHODS)
-    applies_to: tuple[str, ...] = _some_of(*TIGHT_INLETS)
+    method: str = one_of(*METHODS)
+    applies_to: tuple[str, ...] = some_of(*TIGHT_INLETS)
     exercises: tuple[Exercise, ...]
     needs: str = ""
 
@@ -311,98 +326,6 @@ class Idlh(Row):
 
     unknown_is_idlh: bool
     service_life_min: int | None
-
-
-@dataclass(frozen=True, kw_only=True)
-class RankRule(Row):
-    """The lowest rank of particulate filter that a substance allows."""
-
-    rank_min: int
-
-
-@dataclass(frozen=True, kw_only=True)
-class InletRule(Row):
-    """Inlets barred for a substance."""
-
-    barred: tuple[str, ...] = _some_of(*INLETS)
-
-
-@dataclass(frozen=True, kw_only=True)
-class BarRule(Row):
-    """Something a substance rules out, and why."""
-
-    reason: str
-
-
-@dataclass(frozen=True, kw_only=True)
-class EyeRule(Row):
-    """The eyes have to be covered: always, or only where the air irritates them.
-
-    Attributes:
-        goggles_suffice: a half mask will do together with gas-proof goggles.
-    """
-
-    only_if_irritating: bool
-    goggles_suffice: bool = False
-
-
-@dataclass(frozen=True, kw_only=True)
-class ExtendedShiftRule(Row):
-    """Above `above_h` the limit is `numerator_ug_m3_h` divided by the hours worked that day."""
-
-    above_h: float
-    numerator_ug_m3_h: float
-
-    def limit_ug_m3(self, shift_h: float) -> float | None:
-        """The shift's own limit in ug/m3, or None while the printed limit rules."""
-        return self.numerator_ug_m3_h / shift_h if shift_h > self.above_h else None
-
-
-@dataclass(frozen=True, kw_only=True)
-class ShiftRule(Row):
-    """The element is replaced at the latest with the shift.
-
-    Attributes:
-        esli_extends: an end-of-service-life indicator may carry it further.
-    """
-
-    esli_extends: bool = False
-
-
-@dataclass(frozen=True, kw_only=True)
-class ElementHours(Row):
-    """A row of a substance's own table: up to that level, these classes and element hours.
-
-    Attributes:
-        max_ppm: top of the row.
-        hours: replace an element after so long; None where no element is used.
-        classes: respirator classes the row lists; those of a higher row will do as well.
-    """
-
-    max_ppm: float
-    hours: float | None
-    classes: tuple[str, ...]
-
-
-@dataclass(frozen=True, kw_only=True)
-class Substance:
-    """What the law adds for one substance; every part has its own source and mark."""
-
-    id: str
-    name: str
-    cas: tuple[str, ...]
-    particulate_rank: RankRule | None = None
-    inlets: InletRule | None = None
-    air_purifying: BarRule | None = None
-    eyes: EyeRule | None = None
-    extended_shift: ExtendedShiftRule | None = None
-    change_each_shift: ShiftRule | None = None
-    element_hours: tuple[ElementHours, ...] = ()
-
-    def hours_at(self, ppm: float) -> ElementHours | None:
-        """The lowest row of the substance's table that covers `ppm`; None if none does."""
-        rows = sorted(self.element_hours, key=lambda row: row.max_ppm)
-        return next((row for row in rows if ppm <= row.max_ppm), None)
 
 
 @dataclass(frozen=True, kw_only=True)

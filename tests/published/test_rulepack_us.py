@@ -1,4 +1,4 @@
-"""The United States pack against the printed law. All read in the cited text (verified) unless said."""
+"""The United States pack against the printed law; marks beside each, memory means unconfirmed."""
 
 import pytest
 
@@ -40,7 +40,7 @@ def _factors(pack, family, mode, inlet):
     return {row.apf for row in pack.classes if (row.family, row.mode, row.inlet) == kind}
 
 
-@pytest.mark.parametrize(("family", "mode", "inlet", "apf"), CELLS, ids=lambda one: str(one))
+@pytest.mark.parametrize(("family", "mode", "inlet", "apf"), CELLS, ids=str)
 def test_every_cell_of_table_1_has_its_factor_and_blank_cells_have_none(
     us, family, mode, inlet, apf
 ):
@@ -97,7 +97,7 @@ def test_a_qualitative_test_caps_an_air_purifying_full_facepiece_at_10(us):
     assert level.sure == "computed"
 
 
-# 29 CFR 1910.134 App. A I.A.14 (verified); 7 x 60 s + 15 s = 435 s, without grimace 420 s (computed)
+# 29 CFR 1910.134 App. A I.A.14 (verified); sum 435 s, 420 s without grimace (computed)
 STANDARD = [
     ("Normal breathing", 60),
     ("Deep breathing", 60),
@@ -226,8 +226,8 @@ def test_the_lead_limit_shrinks_with_a_longer_shift(us):
     assert rule.is_unconfirmed
 
 
-# 29 CFR 1926.62(f)(3)(i)(C), 1926.1127(g)(3)(i)(C), 1926.1101(h)(3)(i)(B) (verified); 1910.1018(h)(3),
-# 1910.1050(h) (memory)
+# 29 CFR 1926.62(f)(3)(i)(C), 1926.1127(g)(3)(i)(C), 1926.1101(h)(3)(i)(B) (verified);
+# recalled for arsenic and methylenedianiline: 1910.1018(h)(3), 1910.1050(h) (memory)
 @pytest.mark.parametrize(
     ("cas", "sure"),
     [
@@ -268,3 +268,21 @@ def test_asbestos_bars_filtering_facepieces_and_ethylene_oxide_all_half_masks(us
 def test_cartridges_have_their_highest_concentration(us, element, cas, ppm):
     cap = us.element_caps([element], cas=cas)[0]
     assert (cap.max_ppm, cap.sure) == (ppm, "memory")
+
+
+# 29 CFR 1910.1053(b)-(c) (verified); 1910.1025(c) (memory)
+@pytest.mark.parametrize(
+    ("cas", "level_mg_m3", "sure"),
+    [("14808-60-7", 0.025, "verified"), ("7439-92-1", 0.03, "memory")],
+    ids=["silica", "lead"],
+)
+def test_action_levels_of_silica_and_lead(us, cas, level_mg_m3, sure):
+    level = us.substance(cas).action_level
+    assert (level.value, level.unit, level.sure) == (level_mg_m3, "mg/m3", sure)
+
+
+# 29 CFR 1926.1153(d)(2)(iii), 1926.62(d)(6) (verified)
+@pytest.mark.parametrize("cas", ["14808-60-7", "7439-92-1"], ids=["silica", "lead"])
+def test_silica_and_lead_are_measured_again_after_6_or_3_months(us, cas):
+    rule = us.substance(cas).monitoring
+    assert (rule.from_action_level_months, rule.above_limit_months) == (6, 3)
