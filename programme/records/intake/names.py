@@ -7,7 +7,6 @@ from collections.abc import Iterable
 from exposure.models import Agent
 from programme.roster.models import Worker
 
-_CAS = re.compile(r"([0-9]{2,7})-([0-9]{2})-([0-9])")
 _SHOWN = 6
 
 
@@ -21,22 +20,6 @@ def some(names: Iterable[str]) -> str:
     listed = sorted(set(names))
     rest = len(listed) - _SHOWN
     return ", ".join(listed[:_SHOWN]) + (f" and {rest} more" if rest > 0 else "")
-
-
-def cas_fault(text: str) -> str:
-    """What is wrong with a CAS registry number; empty for a sound one and for any other text.
-
-    Source: check digit of the CAS registry number, the digits from the right each times its
-    place, modulo 10 (common practice).
-    """
-    match = _CAS.fullmatch(text.strip())
-    if match is None:
-        return ""
-    digits = (match[1] + match[2])[::-1]
-    check = sum(place * int(digit) for place, digit in enumerate(digits, start=1)) % 10
-    if check == int(match[3]):
-        return ""
-    return f"{text} is no CAS number: its check digit would be {check}; look for a slip in it"
 
 
 def agent_names(agent: Agent) -> set[str]:

@@ -26,6 +26,7 @@ class PreviewRow:
     Attributes:
         number: row number in the file.
         shows: cells as they will be stored, in the order of `Preview.columns`.
+        cells: the same with the names of their columns.
         problems: the row is left out while there is any.
         questions: the row may be stored, but a person should look.
         record: the unsaved record, None if there are problems.
@@ -35,6 +36,7 @@ class PreviewRow:
 
     number: int
     shows: list[str] = field(default_factory=list)
+    cells: list[tuple[str, str]] = field(default_factory=list)
     problems: list[Problem] = field(default_factory=list)
     questions: list[str] = field(default_factory=list)
     record: Any = None
@@ -60,6 +62,10 @@ class Preview:
 
     columns: Sequence[str]
     rows: list[PreviewRow]
+
+    def __post_init__(self) -> None:
+        for row in self.rows:
+            row.cells = list(zip(self.columns, row.shows, strict=True))
 
     def of(self, status: str) -> list[PreviewRow]:
         """The rows of one status."""

@@ -23,6 +23,8 @@ from programme.records.intake.workbook import column_letters
 _YES = frozenset({"yes", "y", "true", "1", "x"})
 _NO = frozenset({"no", "n", "false", "0", ""})
 _ERROR_CELL = "#error"
+# In a value for every row it stands for the row number, so that equal lines can be told apart.
+ROW_MARK = "{row}"
 
 
 def _bad_sign(text: str) -> str:
@@ -73,7 +75,8 @@ class RowReader:
         """The cell or fixed value; empty if the field is not matched."""
         if key in self.matching.columns:
             return self.line.at(self.matching.columns[key])
-        return self.matching.fixed.get(key, "")
+        fixed = self.matching.fixed.get(key, "")
+        return fixed.replace(ROW_MARK, str(self.line.number))
 
     def refuse(self, key: str, says: str, *, value: str | None = None) -> None:
         """Keep a problem with the field's column and value."""

@@ -1,18 +1,21 @@
 """Rows of a laboratory's sheet as air samples."""
 
-import hashlib
-from collections import Counter, defaultdict
+import re
+from collections import defaultdict
 from collections.abc import Iterable
 from datetime import date
 from statistics import median
 
-from exposure.models import Agent, Fraction, Sample, Task, TaskAgent, Unit
+from exposure.actions import fingerprint_of
+from exposure.cas import read_cas
+from exposure.models import Agent, Fraction, Sample, Task, TaskAgent
+from exposure.plausible import SLIP, findings
 from exposure.units import normalise
 from programme.figures import near, unit_sign
 from programme.records.intake.fields import SAMPLES
 from programme.records.intake.matching import Matching
-from programme.records.intake.names import AgentBook, WorkerBook, cas_fault, folded, some
-from programme.records.intake.preview import Preview, PreviewRow
+from programme.records.intake.names import AgentBook, WorkerBook, folded, some
+from programme.records.intake.preview import NEW, Preview, PreviewRow, Problem
 from programme.records.intake.row_reader import RowReader
 from programme.records.intake.table import Table
 from programme.roster.models import Site, Worker
@@ -22,12 +25,9 @@ LARGEST = 1e6
 COLUMNS = (
     "Task", "Agent", "Date", "Worker", "Result", "Kept as", "Minutes", "Where", "Span", "Number",
 )  # fmt: skip
-# A reported volume may be corrected for temperature and pressure; more than this is a slip.
-VOLUME_AGREES_WITHIN = 0.10
-# A factor of 1000 off the group's middle is what a slip of unit looks like.
-SLIP_FACTOR = 300.0
 _FEWEST_FOR_SLIP = 3
-_SHORT_MINUTES, _FULL_MINUTES = 30.0, 120.0
+_CAS_SHAPE = re.compile(r"[0-9]{2,7}-[0-9]{2}-[0-9]")
+_KEY_OF = {"sampled_on": "date", "volume_l": "volume", "flow_l_min": "flow"}
 _FIELDS = {field.key: field for field in SAMPLES}
 
 _WHERE = {
@@ -55,7 +55,7 @@ class SampleBooks:
     def __init__(self, site: Site) -> None:
         self.tasks: dict[str, list[Task]] = defaultdict(list)
         self.groups: dict[int, list[TaskAgent]] = defaultdict(list)
-        rows = TaskAgent.objects.at(site).select_related("agent", "task")
+        rows = TaskAgent.objects.at(site).select_related("agent", "task__site")
         for group in rows:
             self.groups[group.task_id].append(group)
         self.task_names = []
@@ -65,25 +65,16 @@ class SampleBooks:
                 self.tasks[name].append(task)
         self.agents = AgentBook(Agent.objects.at(site))
         self.workers = WorkerBook(Worker.objects.at(site))
-        self.standing: dict[tuple[int, str], str] = {}
+        self.standing: dict[str, str] = {}
         self.references: dict[tuple[int, str], str] = {}
-        stands = Sample.objects.at(site).in_force().values_list(
-            "task_agent_id", "fingerprint", "reference", "result_as_reported"
-        )  # fmt: skip
-        for group_id, print_, reference, reported in stands:
-            self.standing[group_id, print_] = reported
-            if reference:
-                self.references[group_id, folded(reference)] = reported
-
-
-def fingerprint_of(sample: Sample, nth: int) -> str:
-    """What makes two lines of one group the same sample; `nth` tells equal lines of a file apart."""
-    parts = (
-        sample.worker_id, sample.sampled_on, sample.where, sample.span, sample.is_censored,
-        repr(float(sample.value)), sample.unit, sample.minutes, sample.volume_l,
-        folded(sample.reference), nth,
-    )  # fmt: skip
-    return hashlib.sha256("|".join(str(part) for part in parts).encode()).hexdigest()
+        self.values: dict[tuple[int, str], list[float]] = defaultdict(list)
+        for sample in Sample.objects.at(site).in_force():
+            group = sample.task_agent_id
+            self.standing[sample.fingerprint] = sample.result_as_reported
+            if sample.reference:
+                self.references[group, folded(sample.reference)] = sample.result_as_reported
+            if not sample.is_censored:
+                self.values[group, sample.unit].append(sample.value)
 
 
 def _task(reader: RowReader, books: SampleBooks) -> Task | None:
@@ -103,13 +94,24 @@ def _task(reader: RowReader, books: SampleBooks) -> Task | None:
     return None
 
 
+def _refuse_cas(reader: RowReader, text: str) -> bool:
+    """Whether the text has the shape of a CAS number and a wrong check digit."""
+    if not _CAS_SHAPE.fullmatch(text):
+        return False
+    try:
+        read_cas(text)
+    except ValueError as refused:
+        reader.refuse("agent", f"{str(refused).removeprefix('CAS number: ')}.")
+        return True
+    return False
+
+
 def _agents(reader: RowReader, books: SampleBooks, groups: list[TaskAgent]) -> set[Agent]:
     """The agents the text may mean within this task; refused with the reason if there is none."""
     text = reader.text("agent")
     if not text:
         return set()
-    if fault := cas_fault(text):
-        reader.refuse("agent", f"{fault}.")
+    if _refuse_cas(reader, text):
         return set()
     here = AgentBook(group.agent for group in groups)
     if exact := here.find(text):
@@ -134,8 +136,7 @@ def _group(reader: RowReader, books: SampleBooks) -> TaskAgent | None:
     task = _task(reader, books)
     if task is None:
         # Read for its own faults, so that one refusal does not hide another.
-        if fault := cas_fault(reader.text("agent")):
-            reader.refuse("agent", f"{fault}.")
+        _refuse_cas(reader, reader.text("agent"))
         return None
     groups = books.groups.get(task.pk, [])
     agents = _agents(reader, books, groups)
@@ -155,27 +156,15 @@ def _group(reader: RowReader, books: SampleBooks) -> TaskAgent | None:
     return None
 
 
-def _unit_fault(unit: Unit, agent: Agent) -> str:
-    """Why this unit cannot be one of this agent; empty if it can."""
-    if unit == Unit.PPM and agent.is_particulate:
-        return f"ppm is a unit of gases and vapours; {agent} is a {agent.kind}, give mg/m³"
-    if unit == Unit.F_CM3 and agent.kind != Agent.Kind.FIBRE:
-        return f"f/cm³ counts fibres; {agent} is a {agent.kind}, give mg/m³"
-    return ""
-
-
-def _unit(reader: RowReader, group: TaskAgent | None) -> str:
+def _unit(reader: RowReader) -> str:
     """The unit as reported; empty if it was refused."""
     text = reader.text("unit", at_most=20)
     if not text:
         return ""
     try:
-        _, unit = normalise(1.0, text)
+        normalise(1.0, text)
     except ValueError as refused:
         reader.refuse("unit", f"{str(refused).removeprefix('Unit: ')}.")
-        return ""
-    if group is not None and (fault := _unit_fault(unit, group.agent)):
-        reader.refuse("unit", f"{fault}.")
         return ""
     return text
 
@@ -207,7 +196,7 @@ def _measured(reader: RowReader, sample: Sample) -> None:
 def _sample(reader: RowReader, books: SampleBooks, today: date) -> Sample:
     group = _group(reader, books)
     sample = Sample(
-        unit_as_reported=_unit(reader, group),
+        unit_as_reported=_unit(reader),
         where=reader.choice("where", _WHERE),
         span=reader.choice("span", _SPAN),
         sampled_on=reader.day("date", earliest=EARLIEST, latest=today, why=" (not in the future)"),
@@ -227,24 +216,18 @@ def _sample(reader: RowReader, books: SampleBooks, today: date) -> Sample:
     return sample
 
 
-def _ask(reader: RowReader, sample: Sample) -> None:
-    """What is possible but unlikely."""
-    worker, day = sample.worker, sample.sampled_on
-    if worker and day and worker.born_on and day <= worker.born_on:
-        reader.refuse("date", f"{day} is not allowed; {worker.name} was born {worker.born_on}.")
-    elif worker and day and day < worker.active_from:
-        reader.ask(f"{worker.name} began here on {worker.active_from}, after the sample.")
-    if sample.minutes and sample.flow_l_min and sample.volume_l:
-        drawn = sample.minutes * sample.flow_l_min
-        if abs(drawn - sample.volume_l) > VOLUME_AGREES_WITHIN * drawn:
-            reader.ask(
-                f"Volume: {near(sample.volume_l)} L, but {near(sample.minutes)} min at "
-                f"{near(sample.flow_l_min)} L/min are {near(drawn)} L."
-            )
-    if sample.span == Sample.Span.SHORT and (sample.minutes or 0) > _SHORT_MINUTES:
-        reader.ask(f"Span: short term, but {near(sample.minutes)} minutes.")
-    if sample.span == Sample.Span.FULL and 0 < (sample.minutes or 0) < _FULL_MINUTES:
-        reader.ask(f"Span: full shift, but {near(sample.minutes)} minutes only.")
+def _check(reader: RowReader, sample: Sample, today: date) -> None:
+    """What the form would refuse or ask about a sample that could be read."""
+    if reader.row.problems:
+        return
+    for finding in findings(sample, today=today):
+        key = _KEY_OF.get(finding.field, finding.field)
+        if finding.is_question:
+            reader.ask(finding.says)
+        else:
+            label = f"{_FIELDS[key].label}: "
+            says = finding.says.partition(": ")[2] or finding.says
+            reader.refuse(key, says.removeprefix(label))
 
 
 def _shows(sample: Sample) -> list[str]:
@@ -269,44 +252,61 @@ def _shows(sample: Sample) -> list[str]:
 
 
 def _settle(rows: Iterable[PreviewRow], books: SampleBooks) -> None:
-    """Fingerprints, and which rows stand already."""
-    met: Counter[tuple[int, str]] = Counter()
+    """Fingerprints: which rows stand already, and which are twins within the file."""
+    met: dict[str, int] = {}
     for row in rows:
         sample = row.record
         if row.problems:
             continue
-        plain = (sample.task_agent_id, fingerprint_of(sample, 0))
-        met[plain] += 1
-        sample.fingerprint = fingerprint_of(sample, met[plain])
-        key = (sample.task_agent_id, sample.fingerprint)
-        if key in books.standing:
-            row.known_as = f"{books.standing[key]} of {sample.sampled_on}"
-            continue
-        stands = books.references.get((sample.task_agent_id, folded(sample.reference)))
-        if sample.reference and stands is not None:
-            row.questions.append(
-                f"Sample number {sample.reference} stands already, with {stands}. "
-                "To correct a sample, correct it on its own page."
+        sample.fingerprint = fingerprint_of(sample)
+        stands = books.standing.get(sample.fingerprint)
+        if stands is not None:
+            row.known_as = f"{stands} of {sample.sampled_on}"
+        elif sample.fingerprint in met:
+            shown = f"{sample.result_as_reported} {sample.unit_as_reported}"
+            row.problems.append(
+                Problem(
+                    "Sample number",
+                    sample.reference,
+                    f"row {met[sample.fingerprint]} is the same line ({shown}); if it is another "
+                    "sample, give each its sample number. For every row, {row} stands for the "
+                    "row number.",
+                )
             )
+        else:
+            met[sample.fingerprint] = row.number
+            _ask_reference(row, books)
 
 
-def _ask_slips(rows: Iterable[PreviewRow]) -> None:
-    """A result a thousand times off the others of its group is asked about."""
-    values: dict[tuple, list[tuple[float, PreviewRow]]] = defaultdict(list)
+def _ask_reference(row: PreviewRow, books: SampleBooks) -> None:
+    sample = row.record
+    stands = books.references.get((sample.task_agent_id, folded(sample.reference)))
+    if sample.reference and stands is not None:
+        row.questions.append(
+            f"Sample number {sample.reference} stands already, with {stands}. "
+            "To correct a sample, correct it on its own page."
+        )
+
+
+def _ask_slips(rows: Iterable[PreviewRow], books: SampleBooks) -> None:
+    """A result hundreds of times off the middle of its group is asked about."""
+    groups: dict[tuple[int, str], list[PreviewRow]] = defaultdict(list)
     for row in rows:
-        if not row.problems:
-            sample = row.record
-            key = (sample.task_agent_id, sample.unit, sample.span)
-            values[key].append((sample.value, row))
-    for found in values.values():
-        if len(found) < _FEWEST_FOR_SLIP:
+        if row.status == NEW:
+            groups[row.record.task_agent_id, row.record.unit].append(row)
+    for key, found in groups.items():
+        values = [row.record.value for row in found if not row.record.is_censored]
+        values += books.values.get(key, [])
+        if len(values) < _FEWEST_FOR_SLIP:
             continue
-        middle = median(value for value, _ in found)
-        for value, row in found:
-            if not middle / SLIP_FACTOR < value < middle * SLIP_FACTOR:
+        middle = median(values)
+        for row in found:
+            value, is_censored = row.record.value, row.record.is_censored
+            if value >= middle * SLIP or (value <= middle / SLIP and not is_censored):
                 row.questions.append(
-                    f"Result: {row.record.result_as_reported} is more than {SLIP_FACTOR:g} "
-                    "times off the middle of this file; is the unit right?"
+                    f"Result: {row.record.result_as_reported} {row.record.unit_as_reported} is "
+                    f"over {SLIP:g} times off the middle of its group, {near(middle)} "
+                    f"{unit_sign(key[1])}; did a unit slip by 1000?"
                 )
 
 
@@ -324,10 +324,10 @@ def preview_samples(table: Table, matching: Matching, *, site: Site, today: date
     for line in table.lines:
         reader = RowReader(_FIELDS, table, matching, line)
         sample = _sample(reader, books, today)
-        _ask(reader, sample)
+        _check(reader, sample, today)
         reader.row.record = sample
         reader.row.shows = _shows(sample)
         rows.append(reader.row)
     _settle(rows, books)
-    _ask_slips(rows)
+    _ask_slips(rows, books)
     return Preview(COLUMNS, rows)
