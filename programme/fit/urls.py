@@ -8,6 +8,7 @@ app_name = "fit"
 urlpatterns = [
     path("", views.tests, name="tests"),
     path("new/", views.test_add, name="test_add"),
+    path("day/", views.day, name="day"),
     path("preview/", views.preview, name="preview"),
     path("<int:pk>/", views.test, name="test"),
     path("<int:pk>/correct/", views.test_correct, name="test_correct"),

@@ -8,7 +8,7 @@ from programme.fit.models import FitTest
 from programme.roster.models import Site
 from programme.rulepack.pack import RulePack
 
-FIT_TEST = "fit_test"
+FIT_TEST = "fit"
 
 
 def months_after(day: date, months: int) -> date:

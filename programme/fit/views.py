@@ -10,6 +10,7 @@ from django.views.decorators.http import require_GET, require_http_methods, requ
 from programme.equipment.models import Facepiece
 from programme.export import csv_response
 from programme.fit import actions, listing
+from programme.fit.day import DaySheet
 from programme.fit.forms import ChoiceForm, Chosen, FitTestForm, initial_of
 from programme.fit.models import FitTest
 from programme.fit.outcome import NOT_A_PROTECTION_FACTOR, slots_of
@@ -201,3 +202,32 @@ def test_withdraw(request: SiteRequest, pk: int) -> HttpResponse:
             return redirect(found)
     status = 422 if form.is_bound else 200
     return render(request, "fit/withdraw.html", {"form": form, "test": found}, status=status)
+
+
+@site_page("fit tests")
+@require_http_methods(["GET", "POST"])
+def day(request: SiteRequest) -> HttpResponse:
+    """A day's paper: several people, one protocol."""
+    pack = load(request.site.rule_pack)
+    protocol = pack.find_protocol(request.GET.get("protocol", "")) or pack.protocols[0]
+    sheet = DaySheet(request.site, pack, protocol, request.on, request.POST)
+    refused = ""
+    if sheet.is_ready and "work_out" not in request.POST:
+        try:
+            stored = actions.record_fit_tests(sheet.drafts, site=request.site, by=request.user)
+        except ValueError as error:
+            refused = str(error)
+        else:
+            passed = sum(test.outcome == FitTest.Outcome.PASSED for test in stored)
+            messages.success(request, f"{len(stored)} fit tests recorded, {passed} passed.")
+            return redirect("fit:tests", request.site.code)
+    elif sheet.is_bound and not any(not line.is_blank for line in sheet.lines):
+        refused = "Nothing was typed: fill in at least one row."
+    is_refused = sheet.is_bound and "work_out" not in request.POST
+    context = {
+        "sheet": sheet,
+        "pack": pack,
+        "refused": refused,
+        "caution": NOT_A_PROTECTION_FACTOR,
+    }
+    return render(request, "fit/day.html", context, status=422 if is_refused else 200)
