@@ -27,7 +27,7 @@ from filtration.cake import (
     k2_happel_per_s,
     k2_kozeny_carman_per_s,
 )
-from filtration.fibre import Meeting, efficiency, kuwabara_factor, mechanisms
+from filtration.fibre import Layer, Meeting, efficiency, kuwabara_factor, mechanisms
 from filtration.leak import (
     LeakState,
     Seal,
@@ -58,7 +58,6 @@ from filtration.loading import (
     time_to_mass_s,
 )
 from filtration.media import (
-    Layer,
     WorstSize,
     effective_fibre_m,
     fit_line_charge_c_m,

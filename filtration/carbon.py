@@ -170,7 +170,7 @@ def cautions(vapour: Vapour) -> tuple[Caution, ...]:
     """What speaks against trusting a computed life for this vapour; empty if nothing is known to.
 
     Source: measured lives in Nelson & Correia (1976) Am Ind Hyg Assoc J 37:514-525 (verified as
-        restated) for small polar molecules; single use below 65 C after the AX type definition
+        restated) for small polar molecules; single use at 65 C or below after the AX type definition
         (verified); substances that carbon does not hold are common practice.
     """
     found = []
@@ -183,11 +183,11 @@ def cautions(vapour: Vapour) -> tuple[Caution, ...]:
                 f"{vapour.name} is held far less than computed; only measured lives count",
             )
         )
-    if not vapour.boiling_point_c >= SINGLE_USE_BOILING_C:
+    if not vapour.boiling_point_c > SINGLE_USE_BOILING_C:
         found.append(
             Caution(
                 "single-use",
-                f"{vapour.name} boils below {SINGLE_USE_BOILING_C:g} C and moves in a resting bed: "
+                f"{vapour.name} boils at or below {SINGLE_USE_BOILING_C:g} C and moves in a resting bed: "
                 "one shift at most, never used again",
             )
         )
