@@ -217,7 +217,7 @@ def _profile_limit(
         t = following
         if is_done.all():
             break
-    return np.asarray(t + data.center)
+    return np.where(is_done, t + data.center, np.nan)
 
 
 def _profile(

@@ -106,6 +106,4 @@ def log_likelihood(data: Evidence, theta: Floats, delta: Floats) -> Floats:
     r = theta[:, None] * data.limits - delta[:, None]
     below = (data.counts * log_ndtr(r)).sum(axis=1)
     m = data.n_detected
-    return np.asarray(
-        m * np.log(theta) - 0.5 * (theta**2 * data.squares + m * delta**2) + below
-    )
+    return np.asarray(m * np.log(theta) - 0.5 * (theta**2 * data.squares + m * delta**2) + below)

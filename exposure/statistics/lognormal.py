@@ -187,8 +187,9 @@ def land(batch: Batch, *, conf: float) -> Floats:
     level = float(require("conf", conf, above=0.0, below=1.0))
     m = moments(batch)
     is_usable = (m.n >= 3) & (m.s > 0.0)
-    n, ybar, s = (np.where(is_usable, part, fill) for part, fill in
-                  ((m.n, 3.0), (m.ybar, 0.0), (m.s, 1.0)))
+    n, ybar, s = (
+        np.where(is_usable, part, fill) for part, fill in ((m.n, 3.0), (m.ybar, 0.0), (m.s, 1.0))
+    )
     width = s + s * s
     low, high = ybar - 50.0 * width - 5.0, ybar + 50.0 * width + 5.0
     # With three results the limit can lie very far out.

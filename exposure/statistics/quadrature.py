@@ -178,9 +178,7 @@ def _mode(data: Evidence, sigma: Floats, box: Box) -> tuple[Floats, Floats]:
     return mu, _of_mu(data, sigma, mu[:, :, None])[:, :, 0]
 
 
-def _trim(
-    data: Evidence, log_prior: Callable[[Floats], Floats], span: Floats, box: Box
-) -> Floats:
+def _trim(data: Evidence, log_prior: Callable[[Floats], Floats], span: Floats, box: Box) -> Floats:
     """Narrow the span of ln sigma to what carries weight, judged at the mode of mu."""
     share = np.linspace(0.0, 1.0, COARSE_NODES)
     log_sigma = span[0][:, None] + (span[1] - span[0])[:, None] * share
