@@ -20,6 +20,7 @@ from programme.records.intake.fields import fields_of
 from programme.records.intake.limits import MAX_BYTES, megabytes
 from programme.records.intake.preview import Preview
 from programme.records.intake.table import open_questions
+from programme.records.intake.text_files import DELIMITERS
 from programme.records.models import ImportBatch
 from programme.roster.access import SiteRequest, site_page
 from programme.roster.asking import ReasonForm, page_asked
@@ -152,6 +153,7 @@ def import_match(request: SiteRequest, pk: int) -> HttpResponse:
         batches.match(batch, form.matching)
         return redirect("records:import_preview", request.site.code, pk)
     context = {"form": form, "batch": batch, "word": WORDS[batch.kind], "table": table}
+    context["separator"] = DELIMITERS.get(batch.reading.get("delimiter", ""), "")
     if batch.kind == ImportBatch.Kind.FIT_TESTS:
         context["protocols"] = load(request.site.rule_pack).protocols
     return render(

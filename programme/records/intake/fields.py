@@ -1,6 +1,8 @@
 """What each kind of file may bring: our fields, and how others head the same column."""
 
+from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import Any
 
 from exposure.models import Sample
 
@@ -24,7 +26,7 @@ class Field:
     label: str
     words: tuple[str, ...] = ()
     is_required: bool = False
-    choices: tuple[tuple[str, str], ...] = ()
+    choices: Sequence[tuple[str, Any]] = ()
     hint: str = ""
 
 

@@ -1,6 +1,7 @@
 """XLSX workbooks: true row numbers, formula cells named, nothing unpacked before it was counted."""
 
 import io
+import math
 import re
 import zipfile
 from dataclasses import dataclass, field
@@ -15,7 +16,7 @@ from programme.records.intake.limits import (
     CannotRead,
     check_shape,
 )
-from programme.records.intake.zip_guard import check_declared, check_held, chunks
+from programme.records.intake.zip_guard import DAMAGE, check_declared, check_held, chunks
 
 _REF = re.compile(r"([A-Z]{1,3})([0-9]{1,7})")
 _ERROR_CELL = "#error"
@@ -68,7 +69,8 @@ class _SheetScan:
         """One opening tag."""
         local = tag.rpartition(":")[2]
         if local == "row":
-            self._row = int(attributes.get("r", self._row + 1))
+            number = attributes.get("r", "")
+            self._row = int(number) if number.isdecimal() else self._row + 1
             self._column = 0
             check_shape(f"Sheet {self.name}", self._row, 1)
         elif local == "c":
@@ -183,14 +185,15 @@ def _cell(value: Any) -> Any:
     if isinstance(value, bool):
         return "yes" if value else "no"
     if isinstance(value, (int, float)):
-        return value
+        # Kept as JSON, which knows no infinity; as text it is refused wherever a number is due.
+        return value if math.isfinite(value) else str(value)
     if isinstance(value, datetime):
         return value.date().isoformat() if value.time() == time() else value.isoformat(" ")
     if isinstance(value, (date, time)):
         return value.isoformat()
     if isinstance(value, timedelta):
         return f"{value.total_seconds() / 3600:g} h"
-    text = str(value).strip()
+    text = str(value).strip().replace("\x00", "\ufffd")
     if len(text) > MAX_CELL_CHARACTERS:
         raise CannotRead(
             f"File: a cell of {len(text)} characters is not allowed; "
@@ -228,7 +231,9 @@ def read_workbook(data: bytes) -> list[Sheet]:
     try:
         with zipfile.ZipFile(io.BytesIO(data)) as book:
             scans = _scan(book)
-    except (zipfile.BadZipFile, NotImplementedError) as error:
+    except CannotRead:
+        raise
+    except DAMAGE as error:
         raise CannotRead("File: it is damaged or no workbook; save it again as XLSX.") from error
     # Imported here: it costs start-up time that only an import needs to pay.
     from python_calamine import CalamineError, CalamineWorkbook

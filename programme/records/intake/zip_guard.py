@@ -1,7 +1,9 @@
 """What an XLSX file may unpack to: first by what it declares, then by what it holds."""
 
 import copy
+import struct
 import zipfile
+import zlib
 from collections.abc import Iterator
 
 from programme.records.intake.limits import (
@@ -15,6 +17,11 @@ from programme.records.intake.limits import (
 _NOT_AS_DECLARED = (
     "File: a part inside is damaged or does not have the size it declares; save it again."
 )
+# What reading a broken archive may raise.
+DAMAGE = (
+    zipfile.BadZipFile, zlib.error, struct.error, EOFError, NotImplementedError, OSError,
+    OverflowError, ValueError,
+)  # fmt: skip
 CHUNK_BYTES = 64 * 1024
 # Below this nothing is gained by a bomb, and small sheets pack well.
 _SMALL_BYTES = 5 * 1024 * 1024
@@ -45,6 +52,8 @@ def check_declared(book: zipfile.ZipFile) -> None:
         name = member.filename.replace("\\", "/")
         if name.startswith("/") or ".." in name.split("/") or ":" in name:
             raise CannotRead("File: a part inside has a name that leads outside; it is not read.")
+        if member.compress_type not in {zipfile.ZIP_STORED, zipfile.ZIP_DEFLATED}:
+            raise CannotRead("File: it is packed in a way workbooks are not; save it again.")
         if member.flag_bits & 0x1:
             raise CannotRead("File: it is protected by a password; save it without one.")
 
@@ -66,7 +75,7 @@ def chunks(book: zipfile.ZipFile, member: zipfile.ZipInfo) -> Iterator[bytes]:
                 if counted > member.file_size:
                     break
                 yield chunk
-    except (zipfile.BadZipFile, EOFError, NotImplementedError, OSError, ValueError) as error:
+    except DAMAGE as error:
         raise CannotRead(_NOT_AS_DECLARED) from error
     if counted != member.file_size:
         raise CannotRead(_NOT_AS_DECLARED)
