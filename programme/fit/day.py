@@ -1,4 +1,4 @@
-"""A day's paper: several people tested by one protocol, entered as one sheet, stored all or none."""
+"""A day's paper: several people, one protocol, entered as one sheet, stored all or none."""
 
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field

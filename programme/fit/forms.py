@@ -22,7 +22,7 @@ from programme.fit.outcome import (
 )
 from programme.measured import shown_number
 from programme.measured_fields import DayField, MeasuredField
-from programme.roster.asking import AskingForm
+from programme.roster.asking import AskingForm, future_refused
 from programme.roster.models import Site, Worker
 from programme.rulepack.pack import RulePack
 from programme.rulepack.rows import Protocol
@@ -211,8 +211,7 @@ class FitTestForm(AskingForm):
             return
         if day > self.today:
             self.add_error(
-                "tested_on",
-                f"Date of test: {day} lies in the future; it may be up to {self.today}.",
+                "tested_on", future_refused("Date of test", "tested_on", day, self.today)
             )
         elif worker.born_on and day <= worker.born_on:
             self.add_error(

@@ -1,7 +1,9 @@
 """Forms that ask back, lists that sort and turn pages: what pages of several rooms share."""
 
+import calendar
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
+from datetime import date
 from typing import Any, TypeVar
 
 from crispy_forms.helper import FormHelper
@@ -9,6 +11,8 @@ from crispy_forms.layout import Layout, Submit
 from django import forms
 from django.core.paginator import Page, Paginator
 from django.http import HttpRequest
+from django.utils.html import format_html
+from django.utils.safestring import SafeString
 
 ROWS_A_PAGE = 100
 Row = TypeVar("Row")
@@ -51,6 +55,36 @@ class ReasonForm(forms.Form):
         super().__init__(*args, **kwargs)
         self.helper = FormHelper()
         self.helper.layout = Layout("reason", Submit("send", submit))
+
+
+def with_offer(message: str, name: str, value: object) -> SafeString:
+    """A refusal with the likeliest meaning as a button that sends the form with it.
+
+    The button stands after the box, so what it sends is read last and wins.
+    """
+    return format_html(
+        '{} <button type="submit" class="offer" name="{}" value="{}">Use {}</button>',
+        message,
+        name,
+        value,
+        value,
+    )
+
+
+def same_day_past(day: date, today: date) -> date:
+    """The same month and day in the latest year that does not lie after today."""
+    for year in (today.year, today.year - 1):
+        last = calendar.monthrange(year, day.month)[1]
+        past = date(year, day.month, min(day.day, last))
+        if past <= today:
+            return past
+    return today
+
+
+def future_refused(label: str, name: str, day: date, today: date) -> SafeString:
+    """The refusal of a day that lies in the future, with the likeliest day meant."""
+    message = f"{label}: {day} lies in the future; it may be up to {today}."
+    return with_offer(message, name, same_day_past(day, today))
 
 
 @dataclass(frozen=True)

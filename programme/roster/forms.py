@@ -7,7 +7,7 @@ from typing import Any
 from django import forms
 
 from programme.measured_fields import DayField, MeasuredField
-from programme.roster.asking import AskingForm
+from programme.roster.asking import AskingForm, future_refused
 from programme.roster.models import Clearance, SealNote, Training, Worker
 
 OLDEST_BIRTH = date(1920, 1, 1)
@@ -111,15 +111,12 @@ class PaperForm(AskingForm, forms.ModelForm):
     def clean(self) -> dict[str, Any]:
         found = super().clean() or self.cleaned_data
         day = found.get(self.day)
-        label = self.fields[self.day].label
+        label = str(self.fields[self.day].label)
         if not day:
             return found
         born = self.worker.born_on
         if day > self.today:
-            self.add_error(
-                self.day,
-                f"{label}: {day} lies in the future; it may be up to {self.today}.",
-            )
+            self.add_error(self.day, future_refused(label, self.day, day, self.today))
         elif born and day <= born:
             self.add_error(
                 self.day,

@@ -158,6 +158,9 @@ def paper_add(request: SiteRequest, pk: int, kind: str) -> HttpResponse:
 def paper_correct(request: SiteRequest, pk: int, kind: str, row: int) -> HttpResponse:
     paper, worker = _kind(request, kind), worker_of(request, pk)
     old = _old(request, paper, worker, row)
+    if not old.stands:
+        messages.error(request, "This record was replaced or withdrawn; correct the newest one.")
+        return redirect(worker)
     form = _paper_form(request, paper, worker, old=old)
     if form.is_valid():
         reason = form.cleaned_data["reason"]

@@ -180,6 +180,14 @@ def test_a_day_that_cannot_be_is_asked_about(hygienist, worker, size, day, says)
     assert not FitTest.objects.exists()
 
 
+def test_a_future_day_offers_the_likeliest_one_as_a_button(hygienist, worker, size):
+    text = hygienist.post(entry_url(worker, size), typed(tested_on="2099-02-03")).content.decode()
+    assert '-02-03">Use ' in text
+    data = typed() | {"tested_on": ["2099-02-03", str(DAY)]}
+    hygienist.post(entry_url(worker, size), data)
+    assert FitTest.objects.get().tested_on == DAY
+
+
 def test_a_test_brought_from_elsewhere_is_taken_after_a_tick(hygienist, worker, size):
     data = typed(tested_on="2023-12-01", is_meant="on")
     assert hygienist.post(entry_url(worker, size), data).status_code == 302
@@ -209,7 +217,8 @@ def test_a_reported_overall_that_disagrees_asks_why_and_the_exercises_govern(
     answer = hygienist.post(entry_url(worker, size), data)
     text = answer.content.decode()
     assert answer.status_code == 422
-    assert "reported 228" in text and "worked out 114" in text
+    assert "reported 228" in text
+    assert "worked out 114" in text
     hygienist.post(entry_url(worker, size), data | {"note": "paper shows a plain average"})
     test = FitTest.objects.get()
     assert test.overall_fit_factor == pytest.approx(7 / (6 / 100 + 1 / 1000))
@@ -279,7 +288,8 @@ def test_a_correction_keeps_the_old_test_in_words(hygienist, worker, size):
     old.refresh_from_db()
     assert old.replaced_by.overall_fit_factor == pytest.approx(700)
     text = hygienist.get(url("test", old.pk)).content.decode()
-    assert "Replaced" in text and "figures of the next sheet were typed" in text
+    assert "Replaced" in text
+    assert "figures of the next sheet were typed" in text
 
 
 def test_a_correction_starts_from_what_is_on_file(hygienist, worker, size):

@@ -47,7 +47,8 @@ def test_a_user_of_two_sites_chooses_and_is_then_taken_to_the_last_one():
     make_site("south").memberships.create(user=user, role="coordinator")
     client = client_for(user)
     text = client.get("/").content.decode()
-    assert "North works" in text and "South works" in text
+    assert "North works" in text
+    assert "South works" in text
     client.get(url("worker_add", code="south"))
     assert client.get("/").url == reverse("selection:today", args=["south"])
 
@@ -55,7 +56,8 @@ def test_a_user_of_two_sites_chooses_and_is_then_taken_to_the_last_one():
 def test_a_user_of_no_site_is_told_whom_to_ask():
     user = make_user(None, username="newcomer")
     text = client_for(user).get("/").content.decode()
-    assert "Ask your programme administrator" in text and "newcomer" in text
+    assert "Ask your programme administrator" in text
+    assert "newcomer" in text
 
 
 @pytest.mark.parametrize(
@@ -107,7 +109,8 @@ def test_a_refused_form_keeps_what_was_typed():
     answer = client_for(make_user()).post(url("worker_add"), NEW | {"active_from": "2025-02-30"})
     text = answer.content.decode()
     assert answer.status_code == 422
-    assert 'value="2025-02-30"' in text and 'value="Tom Farrow"' in text
+    assert 'value="2025-02-30"' in text
+    assert 'value="Tom Farrow"' in text
 
 
 def test_a_worker_is_changed_without_touching_the_rest():
@@ -138,6 +141,14 @@ def test_a_correction_page_starts_from_what_is_on_file():
     old = make_training(make_worker(), note="in two languages")
     address = url("paper_correct", old.worker_id, "training", old.pk)
     assert 'value="in two languages"' in client_for(make_user()).get(address).content.decode()
+
+
+def test_a_replaced_paper_leads_back_to_the_newest():
+    new = make_training(make_worker())
+    old = make_training(new.worker, replaced_by=new)
+    address = url("paper_correct", old.worker_id, "training", old.pk)
+    answer = client_for(make_user()).get(address)
+    assert answer.url == new.worker.get_absolute_url()
 
 
 def test_a_paper_is_withdrawn_with_a_reason():
