@@ -1,2 +1,6 @@
+from django.urls import include, path
+
 app_name = "records"
-urlpatterns: list = []
+urlpatterns = [
+    path("import/", include("programme.records.import_urls")),
+]

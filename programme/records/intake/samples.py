@@ -27,6 +27,9 @@ COLUMNS = (
 )  # fmt: skip
 _FEWEST_FOR_SLIP = 3
 _CAS_SHAPE = re.compile(r"[0-9]{2,7}-[0-9]{2}-[0-9]")
+_STANDING = (
+    "task_agent_id", "fingerprint", "result_as_reported", "reference", "is_censored", "unit", "value",
+)  # fmt: skip
 _KEY_OF = {"sampled_on": "date", "volume_l": "volume", "flow_l_min": "flow"}
 _FIELDS = {field.key: field for field in SAMPLES}
 
@@ -55,8 +58,7 @@ class SampleBooks:
     def __init__(self, site: Site) -> None:
         self.tasks: dict[str, list[Task]] = defaultdict(list)
         self.groups: dict[int, list[TaskAgent]] = defaultdict(list)
-        rows = TaskAgent.objects.at(site).select_related("agent", "task__site")
-        for group in rows:
+        for group in TaskAgent.objects.at(site).select_related("agent", "task__site"):
             self.groups[group.task_id].append(group)
         self.task_names = []
         for task in Task.objects.at(site):
@@ -68,13 +70,13 @@ class SampleBooks:
         self.standing: dict[str, str] = {}
         self.references: dict[tuple[int, str], str] = {}
         self.values: dict[tuple[int, str], list[float]] = defaultdict(list)
-        for sample in Sample.objects.at(site).in_force():
-            group = sample.task_agent_id
-            self.standing[sample.fingerprint] = sample.result_as_reported
-            if sample.reference:
-                self.references[group, folded(sample.reference)] = sample.result_as_reported
-            if not sample.is_censored:
-                self.values[group, sample.unit].append(sample.value)
+        rows = Sample.objects.at(site).in_force().values_list(*_STANDING)
+        for group, print_, reported, reference, is_censored, unit, value in rows:
+            self.standing[print_] = reported
+            if reference:
+                self.references[group, folded(reference)] = reported
+            if not is_censored:
+                self.values[group, unit].append(value)
 
 
 def _task(reader: RowReader, books: SampleBooks) -> Task | None:
