@@ -4,14 +4,14 @@ import hashlib
 from collections.abc import Sequence
 from dataclasses import dataclass
 from datetime import date
-from typing import Any
 
 from django.contrib.auth.models import User
-from django.db import IntegrityError, models, transaction
+from django.db import IntegrityError, transaction
 
 from exposure.cas import read_cas
 from exposure.models import Agent, ExposureLimit, Sample, Sure, Task, TaskAgent
 from programme.ledger import actions as ledger
+from programme.ledger.changes import save_and_enter
 from programme.roster.actions import reason_given, stand_in, take_back
 from programme.roster.models import Site
 from programme.roster.permissions import require
@@ -263,36 +263,6 @@ def withdraw_limit(limit: ExposureLimit, *, on: date, by: User, reason: str) -> 
     return limit
 
 
-def changes_of(before: models.Model, after: models.Model) -> dict[str, list[Any]]:
-    """Field -> [before, after] for every field that differs."""
-    found = {}
-    for field in after._meta.concrete_fields:
-        old, new = getattr(before, field.attname), getattr(after, field.attname)
-        if old != new:
-            found[field.name] = [str(old), str(new)]
-    return found
-
-
-def _save(record: models.Model, *, noun: str, site: Site, by: User) -> None:
-    """Add or change; the ledger keeps what stood before."""
-    if record.pk is None:
-        record.save(force_insert=True)
-        ledger.enter(f"{noun} added", chain=site.code, of=record, by=by.username)
-        return
-    before = type(record)._default_manager.select_for_update().get(pk=record.pk)
-    changes = changes_of(before, record)
-    if not changes:
-        return
-    record.save(force_update=True)
-    says = f"{record}: " + ", ".join(
-        f"{record._meta.get_field(name).verbose_name} {old} to {new}"  # type: ignore[union-attr]
-        for name, (old, new) in changes.items()
-    )
-    ledger.enter(
-        f"{noun} changed", chain=site.code, of=record, by=by.username, says=says, detail=changes
-    )
-
-
 @transaction.atomic
 def save_task(task: Task, *, by: User) -> Task:
     """Add a task, or save what was changed of one; the ledger keeps before and after.
@@ -304,7 +274,7 @@ def save_task(task: Task, *, by: User) -> Task:
     require(by, "tasks", task.site)
     if Task.objects.at(task.site).filter(code=task.code).exclude(pk=task.pk).exists():
         raise ValueError(f"Code: {task.code} is already a task of {task.site}; choose another")
-    _save(task, noun="task", site=task.site, by=by)
+    save_and_enter(task, noun="task", chain=task.site.code, by=by.username)
     return task
 
 
@@ -325,7 +295,7 @@ def save_task_agent(row: TaskAgent, *, by: User) -> TaskAgent:
         raise ValueError(
             f"Agent: {row.agent}, {row.get_fraction_display()} fraction, is in this task already"
         )
-    _save(row, noun="task agent", site=site, by=by)
+    save_and_enter(row, noun="task agent", chain=site.code, by=by.username)
     return row
 
 
