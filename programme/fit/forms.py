@@ -139,7 +139,7 @@ class FitTestForm(AskingForm):
         self.helper.add_input(Submit("work_out", "Work out", css_class="plain"))
         self.helper.attrs = {
             "hx-post": f"{reverse('fit:preview', args=[chosen.site.code])}?{chosen.query}",
-            "hx-trigger": "input changed delay:400ms",
+            "hx-trigger": "input delay:400ms",
             "hx-target": "#worked-out",
         }
 

@@ -9,6 +9,7 @@ from django.db.models import Exists, OuterRef, Q, QuerySet
 from programme.fit.models import FitTest
 from programme.fit.validity import interval_months, last_lapsed_day, validity_of
 from programme.roster.access import SiteRequest
+from programme.roster.asking import text_asked
 from programme.roster.models import Site
 from programme.rulepack.pack import RulePack
 
@@ -46,7 +47,7 @@ HEADER = (
 
 def asked_of(request: SiteRequest) -> dict[str, str]:
     """The filters as asked; what is not allowed counts as not asked."""
-    asked = {name: request.GET.get(name, "").strip()[:120] for name in ("q", "facepiece")}
+    asked = {name: text_asked(request, name) for name in ("q", "facepiece")}
     outcome, due = request.GET.get("outcome", ""), request.GET.get("due", "")
     asked["outcome"] = outcome if outcome in FitTest.Outcome.values else ""
     asked["due"] = due if due in DUE else ""

@@ -109,6 +109,11 @@ class Head:
         return f"-{self.key}" if self.now == self.key else self.key
 
 
+def text_asked(request: HttpRequest, name: str) -> str:
+    """The text in the address under that name, trimmed, at most 120 characters, without NUL."""
+    return request.GET.get(name, "").replace("\x00", "").strip()[:120]
+
+
 def sort_asked(request: HttpRequest, allowed: Mapping[str, Any], default: str) -> str:
     """The sort key in `?sort=`, with "-" for downwards; `default` for any that is not allowed."""
     asked = request.GET.get("sort", "")

@@ -116,17 +116,22 @@ class Papers:
     """What is on file of one person, newest first; records that no longer stand come along."""
 
     clearances: list[Clearance]
-    trainings: list[Training]
+    trainings: list[tuple[Training, str]]
     seal_notes: list[SealNote]
     fit_tests: list[FitTest]
     changes: list[FilterChange]
+
+
+def _covers(training: Training) -> str:
+    names = [str(family).replace("_", " ") for family in training.families]
+    return ", ".join(names) or "all respirators"
 
 
 def papers_of(worker: Worker, *, on: date) -> Papers:
     """All papers of the person, dated on or before that day."""
     return Papers(
         list(worker.clearances.filter(decided_on__lte=on)),
-        list(worker.trainings.filter(trained_on__lte=on)),
+        [(row, _covers(row)) for row in worker.trainings.filter(trained_on__lte=on)],
         list(worker.seal_notes.filter(noted_on__lte=on)),
         list(worker.fit_tests.filter(tested_on__lte=on).select_related("size__facepiece")),
         list(

@@ -9,7 +9,7 @@ from django.views.decorators.http import require_GET
 
 from programme.export import csv_response
 from programme.roster.access import SiteRequest, site_page
-from programme.roster.asking import Head, in_order, page_asked, sort_asked
+from programme.roster.asking import Head, in_order, page_asked, sort_asked, text_asked
 from programme.roster.models import Worker
 from programme.roster.permissions import may
 from programme.selection.assess import verdicts_of
@@ -56,7 +56,7 @@ def _asked(request: SiteRequest) -> dict[str, str]:
     ready = request.GET.get("ready", "")
     whose = request.GET.get("whose", "")
     return {
-        "q": request.GET.get("q", "").strip()[:120],
+        "q": text_asked(request, "q"),
         "state": state if state in STATES else "here",
         "ready": ready if ready in READINESS else "",
         "whose": whose if whose in {"own", "contractor"} else "",
