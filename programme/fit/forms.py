@@ -1,12 +1,14 @@
 """What is typed of a fit test: exactly the figures of its protocol, and where they came from."""
 
+import re
 from collections.abc import Iterable
 from dataclasses import dataclass
 from datetime import date
-from typing import Any
+from typing import Any, cast
 
 from crispy_forms.layout import Submit
 from django import forms
+from django.db.models import Q
 from django.urls import reverse
 
 from programme.equipment.models import TIGHT_KINDS, FacepieceSize
@@ -23,9 +25,12 @@ from programme.fit.outcome import (
 from programme.measured import shown_number
 from programme.measured_fields import DayField, MeasuredField
 from programme.roster.asking import AskingForm, future_refused
-from programme.roster.models import Site, Worker
+from programme.roster.models import Site, Worker, active_on
 from programme.rulepack.pack import RulePack
 from programme.rulepack.rows import Protocol
+
+
+ID = re.compile(r"[0-9]{1,18}")
 
 
 @dataclass(frozen=True)
@@ -61,20 +66,30 @@ class ChoiceForm(forms.Form):
     def __init__(self, data: Any, *, site: Site, pack: RulePack, on: date) -> None:
         super().__init__(data)
         self.site, self.pack = site, pack
-        self.fields["worker"].queryset = Worker.objects.at(site).active(on)
+        worker_box = cast(forms.ModelChoiceField, self.fields["worker"])
+        size_box = cast(forms.ModelChoiceField, self.fields["size"])
+        # Who has left, or what was withdrawn, is still there for a test entered late or corrected.
+        worker_box.queryset = Worker.objects.at(site).filter(active_on(on) | self._asked("worker"))
         sizes = (
             FacepieceSize.objects.at(site)
-            .filter(facepiece__kind__in=TIGHT_KINDS, facepiece__withdrawn_on=None)
+            .filter(facepiece__kind__in=TIGHT_KINDS)
+            .filter(Q(facepiece__withdrawn_on=None) | self._asked("size"))
             .select_related("facepiece")
             .order_by("facepiece__name", "order", "label")
         )
-        self.fields["size"].queryset = sizes
-        self.fields["size"].choices = _sizes_by_facepiece(sizes)
+        size_box.queryset = sizes
+        size_box.choices = _sizes_by_facepiece(sizes)
         self.protocols = list(pack.protocols)
         kind = self._kind(sizes)
         if kind:
             self.protocols = list(allowed_protocols(pack, kind))
-        self.fields["protocol"].choices = [(one.id, one.name) for one in self.protocols]
+        cast(forms.ChoiceField, self.fields["protocol"]).choices = [
+            (one.id, one.name) for one in self.protocols
+        ]
+
+    def _asked(self, name: str) -> Q:
+        asked = str(self.data.get(name, ""))
+        return Q(pk=int(asked)) if ID.fullmatch(asked) else Q(pk=None)
 
     def _kind(self, sizes: Any) -> str:
         asked = str(self.data.get("size", ""))
@@ -193,7 +208,7 @@ class FitTestForm(AskingForm):
     def unreadable(self) -> list[str]:
         """What is wrong with the figures typed so far."""
         keys = [slot.key for slot in self.slots]
-        return [message for key in keys for message in self.errors.get(key, [])]
+        return [str(message) for key in keys for message in self.errors.get(key, [])]
 
     def clean(self) -> dict[str, Any]:
         found = super().clean() or self.cleaned_data

@@ -112,6 +112,12 @@ def rows_of(request: SiteRequest, asked: dict[str, str], *, pack: RulePack) -> Q
     return rows
 
 
+def usual_tester(request: SiteRequest) -> str:
+    """Who tested, as this user wrote it last; empty before the first time."""
+    mine = FitTest.objects.at(request.site).filter(recorded_by=request.user.get_username())
+    return mine.order_by("-pk").values_list("tester", flat=True).first() or ""
+
+
 def _state(test: FitTest) -> str:
     if test.replaced_by_id is not None:
         return f"replaced by {test.replaced_by_id}"

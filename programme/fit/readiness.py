@@ -46,6 +46,8 @@ def hindrances(
     found = [*_clearance(worker, pack=pack, on=on), *_seal(worker, pack=pack, on=on)]
     if worker.active_to is not None and worker.active_to <= on:
         found.append(Hindrance(f"{worker.name} no longer works here from {worker.active_to}."))
+    if facepiece.withdrawn_on is not None and facepiece.withdrawn_on <= on:
+        found.append(Hindrance(f"{facepiece} was withdrawn on {facepiece.withdrawn_on}."))
     if worker.wears_spectacles and facepiece.kind == FacepieceKind.FULL:
         says = f"{worker.name} wears spectacles: a full facepiece needs its own lens insert."
         found.append(Hindrance(says, pack.clause("spectacles")))

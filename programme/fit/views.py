@@ -126,7 +126,9 @@ def test_add(request: SiteRequest) -> HttpResponse:
     choice, chosen = _chosen(request, request.GET if has_choice else None)
     if chosen is None:
         return _entry_page(request, choice, None, None)
-    form = FitTestForm(request.POST or None, chosen=chosen, today=request.site.today())
+    today = request.site.today()
+    initial = {"tested_on": today, "tester": listing.usual_tester(request)}
+    form = FitTestForm(request.POST or None, chosen=chosen, today=today, initial=initial)
     if form.is_valid() and form.draft and "work_out" not in request.POST:
         try:
             stored = actions.record_fit_test(form.draft, by=request.user)

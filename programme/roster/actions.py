@@ -123,7 +123,7 @@ def change_worker(worker: Worker, *, by: User) -> Worker:
             worker.save(force_update=True)
     except IntegrityError as error:
         raise _refuse_number(worker.personnel_number) from error
-    fields = ", ".join(str(Worker._meta.get_field(name).verbose_name) for name in changes)
+    fields = ", ".join(name.replace("_", " ") for name in changes)
     ledger.enter(
         "worker changed",
         chain=worker.site.code,

@@ -2,7 +2,7 @@
 
 from collections.abc import Sequence
 from datetime import date, timedelta
-from typing import Any
+from typing import Any, cast
 
 from django import forms
 
@@ -97,7 +97,7 @@ class PaperForm(AskingForm, forms.ModelForm):
         super().__init__(*args, **kwargs)
         self.instance.worker = worker
         self.worker, self.today, self.old = worker, today, old
-        names = list(self.Meta.fields)
+        names = list(self._meta.fields or ())
         if old is not None:
             self.fields["reason"] = forms.CharField(
                 label="Reason for the correction",
@@ -213,7 +213,8 @@ class TrainingForm(PaperForm):
 
     def __init__(self, *args: Any, families: Sequence[tuple[str, str]] = (), **kwargs: Any) -> None:
         super().__init__(*args, **kwargs)
-        self.fields["families"].choices = list(families)
+        box = cast(forms.MultipleChoiceField, self.fields["families"])
+        box.choices = list(families)
 
 
 class SealNoteForm(PaperForm):

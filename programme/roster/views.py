@@ -19,7 +19,7 @@ from programme.roster.forms import (
     WorkerForm,
 )
 from programme.roster.models import Clearance, Role, SealNote, Site, Training, Worker
-from programme.roster.permissions import require, role_at
+from programme.roster.permissions import require
 from programme.rulepack.load import load
 
 START_PAGES: dict[str, str] = {
@@ -40,7 +40,8 @@ def start(request: HttpRequest) -> HttpResponse:
         site = sites[0]
     if site is None:
         return render(request, "roster/sites.html", {"choices": sites})
-    return redirect(START_PAGES[str(role_at(request.user, site))], site.code)
+    role = site.memberships.get(user_id=request.user.pk or 0).role
+    return redirect(START_PAGES[role], site.code)
 
 
 def worker_of(request: SiteRequest, pk: int) -> Worker:
@@ -131,7 +132,7 @@ def _paper_form(
         rest["families"] = [(name, name.replace("_", " ")) for name in families]
     initial = None
     if old is not None:
-        initial = {name: getattr(old, name) for name in kind.form.Meta.fields}
+        initial = {name: getattr(old, name) for name in kind.form._meta.fields or ()}
     return kind.form(request.POST or None, initial=initial, **rest)
 
 

@@ -150,8 +150,8 @@ def history_of(worker: Worker) -> list[Entry]:
             keys = model._default_manager.filter(**{relation.field.name: worker})
             papers[model._meta.label_lower] = list(keys.values_list("pk", flat=True))
     subjects = Q()
-    for kind, keys in papers.items():
-        if keys:
-            subjects |= Q(subject_kind=kind, subject_id__in=[str(key) for key in keys])
+    for kind, ids in papers.items():
+        if ids:
+            subjects |= Q(subject_kind=kind, subject_id__in=[str(one) for one in ids])
     rows = Entry.objects.filter(subjects, chain=worker.site.code)
     return list(rows.order_by("-serial")[:HISTORY_ROWS])

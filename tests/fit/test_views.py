@@ -204,6 +204,14 @@ def test_a_test_without_any_figure_is_asked_about(hygienist, worker, size):
     assert not FitTest.objects.exists()
 
 
+def test_a_test_of_somebody_who_left_can_still_be_entered_and_corrected(hygienist, site, size):
+    left = make_worker(site, active_to=DAY + timedelta(days=30))
+    assert hygienist.post(entry_url(left, size), typed()).status_code == 302
+    data = typed("700", reason="figures of the next sheet were typed")
+    address = url("test_correct", FitTest.objects.get().pk)
+    assert hygienist.post(address, data).status_code == 302
+
+
 def test_a_failure_is_kept_and_offers_another_size(hygienist, worker, size):
     text = hygienist.post(entry_url(worker, size), typed("60"), follow=True).content.decode()
     assert FitTest.objects.get().outcome == "failed"
