@@ -125,9 +125,10 @@ def electret_worst(
     decay = require("decay_kg_m2", decay_kg_m2, above=0.0)
     rise = mechanical * growth * decay
     has_peak = rise > 0.0
-    ratio = np.where(has_peak, electrical / np.where(has_peak, rise, 1.0), np.inf)
     # Where the charge adds little the new medium is the worst: the peak lies at no load.
-    load = np.where(has_peak, decay * np.log(np.maximum(ratio, 1.0)), np.inf)
+    least = np.where(has_peak, rise, 1.0)
+    climb = np.log(np.maximum(electrical, least)) - np.log(least)
+    load = np.where(has_peak, decay * climb, np.inf)
     finite = np.where(has_peak, load, 0.0)
     at_peak = np.exp(-(mechanical * (1.0 + growth * finite) + electrical * np.exp(-finite / decay)))
     in_the_limit = np.exp(-mechanical)

@@ -97,7 +97,9 @@ def breakthrough_min(
         ValueError: an argument out of range, the outlet at or above the inlet, or saturated air.
 
     Valid: one vapour, constant conditions. Published agreement is within a factor of 1.5 to 2; far
-        too long for small polar molecules, see `cautions`.
+        too long for small polar molecules, see `cautions`. The capacity has no linear limit at low
+        concentration, so that a weakly held vapour, or a bed near its critical mass, may seem to
+        last *less* at a lower concentration: too short there, not too long.
     Source: Jonas & Rehrmann (1973) Carbon 11:59-64; Wood (1994) Am Ind Hyg Assoc J 55:11-15
         (memory).
     """

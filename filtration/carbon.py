@@ -170,7 +170,7 @@ def cautions(vapour: Vapour) -> tuple[Caution, ...]:
     """What speaks against trusting a computed life for this vapour; empty if nothing is known to.
 
     Source: measured lives in Nelson & Correia (1976) Am Ind Hyg Assoc J 37:514-525 (verified as
-        restated) for small polar molecules; single use at 65 C or below after the AX type definition
+        restated) for small polar molecules; single use to 65 C after the AX type definition
         (verified); substances that carbon does not hold are common practice.
     """
     found = []
@@ -187,7 +187,8 @@ def cautions(vapour: Vapour) -> tuple[Caution, ...]:
         found.append(
             Caution(
                 "single-use",
-                f"{vapour.name} boils at or below {SINGLE_USE_BOILING_C:g} C and moves in a resting bed: "
+                f"{vapour.name} boils at {SINGLE_USE_BOILING_C:g} C or below and moves in a "
+                "resting bed: "
                 "one shift at most, never used again",
             )
         )

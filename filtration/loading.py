@@ -263,7 +263,8 @@ def mass_to_limit_kg(element: ParticleFilter, *, limit_pa: ArrayLike) -> Floats:
     room = np.maximum(np.log(limit / clean), 0.0)
     needed = growth * clogging
     # Inside the medium the limit is met where exp(b W) closes the room; beyond it, in the cake.
-    within = np.where(growth > 0.0, room / np.where(growth > 0.0, growth, 1.0), clogging)
+    is_within = room < needed
+    within = np.where(is_within, room / np.where(is_within, growth, 1.0), clogging)
     inside = np.where(room > 0.0, np.minimum(within, clogging), 0.0)
     over = np.maximum(limit - clean * np.exp(needed), 0.0)
     return plain(inside * area + over * area**2 / (k2_high_to_low * flow))

@@ -30,7 +30,7 @@ class Spreading:
 
     Attributes:
         median: geometric mean, above 0.
-        gsd: geometric standard deviation, 1 to 20.
+        gsd: geometric standard deviation, 1 or more.
     """
 
     median: ArrayLike
@@ -38,7 +38,7 @@ class Spreading:
 
     def __post_init__(self) -> None:
         require("median", self.median, above=0.0)
-        require("gsd", self.gsd, at_least=1.0, at_most=20.0)
+        require("gsd", self.gsd, at_least=1.0)
 
     @property
     def log_sd(self) -> Floats:
