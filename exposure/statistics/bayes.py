@@ -123,16 +123,19 @@ def posterior(
     is_closed &= held.spread in CLOSED_FORM_LOSS
     cuts = log_limit[:, None] + np.log(times)
     found = np.full((len(log_limit), times.size + 2), np.nan)
-    for is_kind, work in ((is_closed, _closed_form), (~is_closed, _quadrature)):
-        index = np.flatnonzero(has_answer & is_kind)
-        if index.size:
-            found[index] = work(batch.rows(index), held, cuts[index], log_limit[index])
+    index = np.flatnonzero(has_answer & is_closed)
+    if index.size:
+        found[index] = _closed_form(batch.rows(index), held, cuts=cuts[index])
+    index = np.flatnonzero(has_answer & ~is_closed)
+    if index.size:
+        part, log_limits = batch.rows(index), log_limit[index]
+        found[index] = _quadrature(part, held, cuts=cuts[index], log_limit=log_limits)
     p_over, q70, q95 = found[:, :-2], np.exp(found[:, -2]), np.exp(found[:, -1])
     status = np.where(np.isfinite(q95), 0, 1).astype(np.int8)
     return Posterior(p_over, tuple(float(m) for m in times), q70, q95, status)
 
 
-def _closed_form(batch: Batch, prior: Prior, cuts: Floats, _limit: Floats) -> Floats:
+def _closed_form(batch: Batch, prior: Prior, *, cuts: Floats) -> Floats:
     """Unbounded prior on complete results: the posterior is a scaled noncentral t."""
     m = moments(batch)
     df = m.n - CLOSED_FORM_LOSS[prior.spread]
@@ -144,7 +147,7 @@ def _closed_form(batch: Batch, prior: Prior, cuts: Floats, _limit: Floats) -> Fl
     return np.hstack([over, quantiles])
 
 
-def _quadrature(batch: Batch, prior: Prior, cuts: Floats, log_limit: Floats) -> Floats:
+def _quadrature(batch: Batch, prior: Prior, *, cuts: Floats, log_limit: Floats) -> Floats:
     data = evidence(batch)
     box = _box(batch, prior, log_limit)
     is_bounded = (prior.gsd is not None) & np.isfinite(box.low - data.center)
@@ -158,7 +161,8 @@ def _quadrature(batch: Batch, prior: Prior, cuts: Floats, log_limit: Floats) -> 
     for start in range(0, index.size, size):
         rows = index[start : start + size]
         part = data.rows(rows)
-        cut = slices(part, prior.log_density, _span(prior, batch.rows(rows)), box.rows(rows))
+        span = _span(prior, batch.rows(rows))
+        cut = slices(part, prior.log_density, span=span, box=box.rows(rows))
         center = part.center[:, None]
         over = 1.0 - cut.cdf(cuts[rows] - center, z=Z95)
         found[rows] = np.hstack([over, center + cut.quantiles(np.array([0.70, 0.95]), z=Z95)])

@@ -9,7 +9,7 @@ results, a bad result or no limit is status 1, "no estimate", and NaN in every f
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import Final
+from typing import Any, Final
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
@@ -25,8 +25,8 @@ from exposure.statistics.flags import (
     is_coarse,
     is_identical,
 )
-from exposure.statistics.gate import Bools, Floats, Ints, require, require_choice
-from exposure.statistics.lognormal import P95, is_complete, moments, utl
+from exposure.statistics.gate import Bools, Floats, Ints, Objects, Status, require, require_choice
+from exposure.statistics.lognormal import P95, SPREAD_FROM, is_complete, moments, utl
 from exposure.statistics.pack import Batch, buckets
 
 POLICIES: Final = ("upper70", "upper95")
@@ -77,11 +77,11 @@ class GroupFigures:
     x95_upper70: Floats
     x95_upper95: Floats
     highest: Floats
-    basis: NDArray[np.object_]
+    basis: Objects
     governing: Floats
     ratio: Floats
     ratio95: Floats
-    status: NDArray[np.int8]
+    status: Status
     flags: list[tuple[str, ...]]
 
 
@@ -125,7 +125,7 @@ def describe(batch: Batch, limit: ArrayLike, *, policy: str = "upper70") -> Grou
         index = rows[is_usable]
         if index.size:
             found = _describe_part(part.rows(is_usable), allowed[index], policy=policy)
-            _enter(figures, flags, index, found)
+            _enter(figures, flags, index=index, found=found)
     return GroupFigures(n=batch.n, n_censored=batch.n_censored, flags=flags, **figures)
 
 
@@ -139,10 +139,10 @@ def _usable_limit(limit: ArrayLike, n_groups: int) -> Floats:
     return np.broadcast_to(np.where(is_good, number, np.nan), (n_groups,))
 
 
-def _blank(batch: Batch) -> dict[str, NDArray]:
+def _blank(batch: Batch) -> dict[str, NDArray[Any]]:
     shape = batch.n.shape
     names = ("gm", "gsd", "x95", "x95_upper70", "x95_upper95", "highest", "governing")
-    figures: dict[str, NDArray] = {
+    figures: dict[str, NDArray[Any]] = {
         name: np.full(shape, np.nan) for name in (*names, "ratio", "ratio95")
     }
     figures["basis"] = np.full(shape, NONE, dtype=object)
@@ -169,10 +169,11 @@ def _words(holds: dict[str, Bools]) -> list[tuple[str, ...]]:
 
 
 def _enter(
-    figures: dict[str, NDArray],
+    figures: dict[str, NDArray[Any]],
     flags: list[tuple[str, ...]],
+    *,
     index: Ints,
-    found: tuple[dict[str, NDArray], list[tuple[str, ...]]],
+    found: tuple[dict[str, NDArray[Any]], list[tuple[str, ...]]],
 ) -> None:
     columns, words = found
     for name, column in columns.items():
@@ -183,7 +184,7 @@ def _enter(
 
 def _describe_part(
     batch: Batch, limit: Floats, *, policy: str
-) -> tuple[dict[str, NDArray], list[tuple[str, ...]]]:
+) -> tuple[dict[str, NDArray[Any]], list[tuple[str, ...]]]:
     """Figures of sound groups with results and a limit."""
     gm, gsd, x95 = _points(batch)
     kinds = _kinds(batch)
@@ -225,7 +226,7 @@ def _kinds(batch: Batch) -> _Kinds:
     return _Kinds(lognormal, likelihood, few, all_below, identical)
 
 
-def _basis(kinds: _Kinds) -> NDArray[np.object_]:
+def _basis(kinds: _Kinds) -> Objects:
     basis = np.full(kinds.few.shape, FEW, dtype=object)
     basis[kinds.lognormal] = LOGNORMAL
     basis[kinds.likelihood] = LIKELIHOOD
@@ -238,8 +239,8 @@ def _points(batch: Batch) -> tuple[Floats, Floats, Floats]:
     """GM, GSD and X95 to show; a single detect among nondetects gives none."""
     m, fit = moments(batch), tobit(batch)
     n_detected = batch.n - batch.n_censored
-    can_fit = (n_detected >= 2) & (batch.n_censored <= MOST_CENSORED * batch.n)
-    has_both = is_complete(batch) & (batch.n >= 2)
+    can_fit = (n_detected >= SPREAD_FROM) & (batch.n_censored <= MOST_CENSORED * batch.n)
+    has_both = is_complete(batch) & (batch.n >= SPREAD_FROM)
     mu = np.where(has_both, m.ybar, np.where(can_fit, fit.mu, np.nan))
     sigma = np.where(has_both, m.s, np.where(can_fit, fit.sigma, np.nan))
     with np.errstate(over="ignore"):
@@ -269,23 +270,34 @@ def _uppers(batch: Batch, kinds: _Kinds, limit: Floats, *, x95: Floats) -> _Uppe
     return _Uppers(limits, is_driven)
 
 
-def all_below_bound(lod: ArrayLike, n: ArrayLike, *, conf: float = 0.95) -> Floats:
+def share_above_lod(n: ArrayLike, *, conf: float = 0.95) -> Floats:
+    """Upper limit of the share of exposures above detection when none of n results was, 0 to 1.
+
+    Source: binomial, 1 - (1 - conf)^(1/n).
+    """
+    level = float(require("conf", conf, above=0.0, below=1.0))
+    count = np.where(np.asarray(n) >= 1, n, np.nan).astype(np.float64)
+    return np.asarray(1.0 - (1.0 - level) ** (1.0 / count))
+
+
+def all_below_bound(
+    lod: ArrayLike, n: ArrayLike, *, conf: float = 0.95, sigma: float = ASSUMED_SIGMA
+) -> Floats:
     """Upper limit of the 95th percentile when all n results are below detection.
 
-    The share of exposures above the highest limit is at most 1 - (1 - conf)^(1/n); a lognormal of
-    the assumed spread with that share has this 95th percentile. A statement about the method's
-    reach, not an estimate of the exposure.
+    A lognormal of the assumed spread, with as large a share above the highest limit as the results
+    allow, has this 95th percentile. A statement about the method's reach, not an estimate of the
+    exposure.
 
     Args:
         lod: highest detection limit; the answer has its unit.
         n: results, 1 or more; NaN for none.
         conf: above 0 and below 1.
+        sigma: assumed standard deviation of ln x, above 0.
 
     Source: binomial bound with a stated sigma of 0.80 (our own choice).
     """
-    level = float(require("conf", conf, above=0.0, below=1.0))
-    count = np.where(np.asarray(n) >= 1, n, np.nan).astype(np.float64)
-    share_below = (1.0 - level) ** (1.0 / count)
+    spread = float(require("sigma", sigma, above=0.0))
     # From 59 results on the percentile itself is below the limit; how far is only assumed.
-    lift = np.maximum(ASSUMED_SIGMA * (Z95 - ndtri(share_below)), 0.0)
+    lift = np.maximum(spread * (Z95 + ndtri(share_above_lod(n, conf=conf))), 0.0)
     return np.asarray(np.asarray(lod) * np.exp(lift))

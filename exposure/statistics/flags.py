@@ -15,7 +15,7 @@ import numpy as np
 from exposure.statistics.gate import Bools, Floats
 from exposure.statistics.goodness import goodness_of_fit
 from exposure.statistics.likelihood import SAME_LOG
-from exposure.statistics.lognormal import is_complete, moments
+from exposure.statistics.lognormal import SPREAD_FROM, is_complete, moments
 from exposure.statistics.outliers import has_outlier
 from exposure.statistics.pack import Batch
 
@@ -38,7 +38,7 @@ SENTENCES: Final[Mapping[str, str]] = MappingProxyType(
         "no_results": "No results.",
         "bad_value": "A result is missing, zero or negative: correct it or give its limit.",
         "limit_missing": "No limit above zero to compare with.",
-        "too_many_results": "More results than shifts: readings of a logger are one result a shift.",
+        "too_many_results": "Too many for shift results: a logged shift is one result.",
         "out_of_range": "The spread is so wide that the limit of the estimate is beyond numbers.",
         "n_lt_6": "Fewer than 6 results: the prior on the spread takes part in the figure.",
         "few_detects": "Fewer than 3 results above detection.",
@@ -93,7 +93,7 @@ def data_flags(batch: Batch, limit: Floats, gsd: Floats) -> dict[str, Bools]:
 
 def is_identical(batch: Batch) -> Bools:
     """Two or more results, none below detection, all the same, (G,)."""
-    return np.asarray(is_complete(batch) & (batch.n >= 2) & (moments(batch).s == 0.0))
+    return np.asarray(is_complete(batch) & (batch.n >= SPREAD_FROM) & (moments(batch).s == 0.0))
 
 
 def is_coarse(batch: Batch) -> Bools:

@@ -14,6 +14,8 @@ from numpy.typing import ArrayLike, NDArray
 Floats: TypeAlias = NDArray[np.float64]
 Bools: TypeAlias = NDArray[np.bool_]
 Ints: TypeAlias = NDArray[np.int64]
+Objects: TypeAlias = NDArray[np.object_]
+Status: TypeAlias = NDArray[np.int8]
 
 
 def require(

@@ -20,6 +20,7 @@ from exposure.statistics.pack import Batch, buckets
 
 TESTABLE_FROM: Final = 6
 TESTABLE_TO: Final = 5000
+SMALL_TO: Final = 11
 SCALES: Final = ("ln", "raw")
 
 # Royston 1995 (Appl Stat 44:547-51, AS R94), lowest power first; checked against
@@ -90,7 +91,7 @@ def _shapiro_wilk(numbers: Floats, mask: Bools) -> tuple[Floats, Floats]:
     has_spread = np.abs(x).max(axis=1) > SAME_LOG * np.abs(numbers).max(axis=1)
     squares = np.where(has_spread, squares, np.nan)
     w = np.minimum((weight * x).sum(axis=1) ** 2 / squares, 1.0)
-    return w, _royston_p(w, n)
+    return np.asarray(w), _royston_p(w, n)
 
 
 def _royston_weights(m: Floats, n: Floats) -> Floats:
@@ -111,7 +112,7 @@ def _royston_weights(m: Floats, n: Floats) -> Floats:
 
 def _royston_p(w: Floats, n: Floats) -> Floats:
     log_n = np.log(n)
-    is_small = n <= 11
+    is_small = n <= SMALL_TO
     tail = np.log1p(-np.minimum(w, 1.0 - 1e-16))
     gamma = polyval(n, SMALL_GAMMA)
     room = np.where(is_small, gamma - tail, 1.0)

@@ -7,18 +7,22 @@ Notation: ybar and s are mean and standard deviation (n - 1) of ln x, z_p the no
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import Final
 
 import numpy as np
 from numpy.typing import ArrayLike
-from scipy.special import ndtr, ndtri, nctdtrinc, nctdtrit, stdtrit
+from scipy.special import nctdtrinc, nctdtrit, ndtr, ndtri, stdtrit
 
-from exposure.statistics.gate import Bools, Floats, require
+from exposure.statistics.gate import Bools, Floats, Status, require
 from exposure.statistics.likelihood import SAME_LOG
 from exposure.statistics.pack import Batch
 
-P95 = 0.95
-LAND_NODES = 200
-BISECTIONS = 80
+P95: Final = 0.95
+LAND_NODES: Final = 200
+BISECTIONS: Final = 80
+
+SPREAD_FROM: Final = 2
+LAND_FROM: Final = 3
 
 
 @dataclass(frozen=True)
@@ -48,7 +52,7 @@ class Summary:
     gsd: Floats
     am_mvue: Floats
     x95: Floats
-    status: np.ndarray
+    status: Status
 
 
 @dataclass(frozen=True)
@@ -77,10 +81,10 @@ def k_factor(n: ArrayLike, *, p: ArrayLike, conf: ArrayLike) -> Floats:
     share = require("p", p, above=0.0, below=1.0)
     level = require("conf", conf, above=0.0, below=1.0)
     count = np.asarray(n, dtype=np.float64)
-    usable = np.where(count >= 2, count, 2.0)
+    usable = np.where(count >= SPREAD_FROM, count, SPREAD_FROM)
     root = np.sqrt(usable)
     k = nctdtrit(usable - 1.0, ndtri(share) * root, level) / root
-    return np.asarray(np.where(count >= 2, k, np.nan))
+    return np.asarray(np.where(count >= SPREAD_FROM, k, np.nan))
 
 
 def is_complete(batch: Batch) -> Bools:
@@ -96,7 +100,7 @@ def moments(batch: Batch) -> Moments:
     about = np.where(batch.mask & usable[:, None], batch.logs - ybar[:, None], 0.0)
     is_spread = np.abs(about).max(axis=1, initial=0.0) > SAME_LOG
     squares = np.where(is_spread, (about**2).sum(axis=1), 0.0)
-    s = np.sqrt(squares / np.where(n >= 2, n - 1.0, np.nan))
+    s = np.sqrt(squares / np.where(n >= SPREAD_FROM, n - 1.0, np.nan))
     return Moments(n, ybar, s)
 
 
@@ -186,14 +190,14 @@ def land(batch: Batch, *, conf: float) -> Floats:
     """
     level = float(require("conf", conf, above=0.0, below=1.0))
     m = moments(batch)
-    is_usable = (m.n >= 3) & (m.s > 0.0)
+    is_usable = (m.n >= LAND_FROM) & (m.s > 0.0)
     n, ybar, s = (
         np.where(is_usable, part, fill) for part, fill in ((m.n, 3.0), (m.ybar, 0.0), (m.s, 1.0))
     )
     width = s + s * s
     low, high = ybar - 50.0 * width - 5.0, ybar + 50.0 * width + 5.0
     # With three results the limit can lie very far out.
-    high = high + 1e4 * width * (n < 10)
+    high = high + 1e5 * width / n**4
     for _ in range(BISECTIONS):
         middle = 0.5 * (low + high)
         is_below = _land_tail(n, ybar, s, psi=middle) > 1.0 - level

@@ -12,6 +12,7 @@ from exposure.statistics.lognormal import moments
 from exposure.statistics.pack import Batch
 
 LEVEL: Final = 0.01
+TESTABLE_FROM: Final = 3
 
 
 def largest_deviation(batch: Batch) -> Floats:
@@ -29,7 +30,7 @@ def grubbs_critical(n: Floats, *, level: float = LEVEL) -> Floats:
         level/(2 n), (n - 1)/sqrt(n) sqrt(t^2/(n - 2 + t^2)).
     """
     share = float(require("level", level, above=0.0, below=0.5))
-    count = np.where(np.asarray(n) >= 3, n, np.nan).astype(np.float64)
+    count = np.where(np.asarray(n) >= TESTABLE_FROM, n, np.nan).astype(np.float64)
     t = stdtrit(count - 2.0, share / (2.0 * count))
     return np.asarray((count - 1.0) / np.sqrt(count) * np.sqrt(t * t / (count - 2.0 + t * t)))
 

@@ -39,12 +39,12 @@ class Batch:
     @cached_property
     def n(self) -> Ints:
         """Results in each group, (G,)."""
-        return self.mask.sum(axis=1)
+        return np.asarray(self.mask.sum(axis=1))
 
     @cached_property
     def n_censored(self) -> Ints:
         """Results below detection in each group, (G,)."""
-        return self.censored.sum(axis=1)
+        return np.asarray(self.censored.sum(axis=1))
 
     @cached_property
     def detected(self) -> Bools:
@@ -64,7 +64,7 @@ class Batch:
     def is_sound(self) -> Bools:
         """True for groups whose every number is finite and above 0, (G,); also if empty."""
         is_good = np.isfinite(self.bound) & (self.bound > 0.0)
-        return (is_good | ~self.mask).all(axis=1)
+        return np.asarray((is_good | ~self.mask).all(axis=1))
 
     @cached_property
     def logs(self) -> Floats:
@@ -127,7 +127,7 @@ def pack(
     lengths = {array.shape for array in (number, is_censored, row, limit)}
     if len(lengths) > 1 or number.ndim != 1:
         raise ValueError(f"values: shapes {sorted(lengths)} differ; all must be flat and as long")
-    if row.size and not (0 <= row.min() and row.max() < n_groups):
+    if row.size and not (row.min() >= 0 and row.max() < n_groups):
         outside = row[(row < 0) | (row >= n_groups)][0]
         raise ValueError(f"group: {outside} is not allowed; it must be 0 to {n_groups - 1}")
     order = np.argsort(row, kind="stable")

@@ -26,6 +26,7 @@ LOG_REACH: Final = 24.0
 # Sigma whose weight is this far below the best, in logs, carries nothing.
 WEIGHT_REACH: Final = 30.0
 MODE_STEPS: Final = 40
+MODE_NEAR: Final = 1e-9
 HALVINGS: Final = 14
 INVERSIONS: Final = 42
 
@@ -96,13 +97,14 @@ class Slices:
             middle = 0.5 * (low + high)
             is_below = self.cdf(middle, z=z) < levels
             low, high = np.where(is_below, middle, low), np.where(is_below, high, middle)
-        has_one = np.isfinite(self.weight).all(axis=1)[:, None]
+        has_one = np.asarray(np.isfinite(self.weight).all(axis=1))[:, None]
         return np.where(has_one, 0.5 * (low + high), np.nan)
 
 
 def slices(
     data: Evidence,
     log_prior: Callable[[Floats], Floats],
+    *,
     span: Floats,
     box: Box,
 ) -> Slices:
@@ -115,7 +117,7 @@ def slices(
         box: bounds of mu.
     """
     inner = Box((box.low - data.center)[:, None], (box.high - data.center)[:, None])
-    span = _trim(data, log_prior, span, inner)
+    span = _trim(data, log_prior, span=span, box=inner)
     nodes, weights = np.polynomial.legendre.leggauss(SIGMA_NODES)
     half = 0.5 * (span[1] - span[0])[:, None]
     log_sigma = span[0][:, None] + half * (nodes + 1.0)
@@ -172,13 +174,15 @@ def _mode(data: Evidence, sigma: Floats, box: Box) -> tuple[Floats, Floats]:
             first, second = _slope_of_mu(data, sigma, mu)
             step = np.where(has_detect, first / np.where(has_detect, second, 1.0), 0.0)
             mu = mu - sigma * step
-            if (np.abs(step) < 1e-9).all():
+            if (np.abs(step) < MODE_NEAR).all():
                 break
     mu = np.where(has_detect, np.clip(mu, box.low, box.high), box.low)
     return mu, _of_mu(data, sigma, mu[:, :, None])[:, :, 0]
 
 
-def _trim(data: Evidence, log_prior: Callable[[Floats], Floats], span: Floats, box: Box) -> Floats:
+def _trim(
+    data: Evidence, log_prior: Callable[[Floats], Floats], *, span: Floats, box: Box
+) -> Floats:
     """Narrow the span of ln sigma to what carries weight, judged at the mode of mu."""
     share = np.linspace(0.0, 1.0, COARSE_NODES)
     log_sigma = span[0][:, None] + (span[1] - span[0])[:, None] * share
