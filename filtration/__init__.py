@@ -27,6 +27,11 @@ from filtration.cake import (
     k2_happel_per_s,
     k2_kozeny_carman_per_s,
 )
+from filtration.clogging import (
+    mass_behind_seal_kg,
+    time_behind_seal_s,
+    time_to_limit_behind_seal_s,
+)
 from filtration.fibre import Layer, Meeting, efficiency, kuwabara_factor, mechanisms
 from filtration.leak import (
     LeakState,
@@ -47,13 +52,11 @@ from filtration.loading import (
     bergman_pressure_drop_pa,
     electret_penetration,
     electret_worst,
-    mass_behind_seal_kg,
     mass_collected_kg,
     mass_to_limit_kg,
     mechanical_penetration,
     pressure_drop_pa,
     resistance_pa_s_m3,
-    time_behind_seal_s,
     time_to_limit_s,
     time_to_mass_s,
 )
@@ -64,6 +67,7 @@ from filtration.media import (
     lee_liu_least_efficiency,
     lee_liu_worst_size_m,
     most_penetrating,
+    neutralised_penetration,
     penetration,
     quality_factor_per_pa,
     weighted_penetration,
@@ -205,6 +209,7 @@ __all__ = [
     "minute_volume_m3_s",
     "mixture_lives",
     "most_penetrating",
+    "neutralised_penetration",
     "overall_fit_factor",
     "penetration",
     "polarisability_cm3_mol",
@@ -224,6 +229,7 @@ __all__ = [
     "slip_correction",
     "solve",
     "time_behind_seal_s",
+    "time_to_limit_behind_seal_s",
     "time_to_limit_s",
     "time_to_mass_s",
     "two_level_factor",

@@ -35,7 +35,6 @@ from filtration.ageing import (
     mechanical_penetration,
 )
 from filtration.cake import CAKE_RESISTANCE, CakeResistance
-from filtration.leak import Seal, solve
 from filtration.require import Floats, plain, require
 
 __all__ = [
@@ -47,24 +46,16 @@ __all__ = [
     "bergman_pressure_drop_pa",
     "electret_penetration",
     "electret_worst",
-    "mass_behind_seal_kg",
     "mass_collected_kg",
     "mass_to_limit_kg",
     "mechanical_penetration",
     "pressure_drop_pa",
     "resistance_pa_s_m3",
-    "time_behind_seal_s",
     "time_to_limit_s",
     "time_to_mass_s",
 ]
 
 LIFE_ORDER: Final = ("low", "likely", "high")
-
-# Half of each minute is inhalation, at twice the minute volume on average.
-INSPIRATORY_DUTY: Final = 0.5
-QUADRATURE_NODES: Final = 32
-NEWTON_STEPS: Final = 30
-NEWTON_DONE: Final = 1e-12
 
 
 @dataclass(frozen=True)
@@ -218,10 +209,10 @@ def resistance_pa_s_m3(mass_kg: ArrayLike, *, element: ParticleFilter) -> Floats
         element: the filter.
     """
     mass = require("mass_kg", mass_kg, at_least=0.0)
-    return plain(_resistance(mass[..., np.newaxis], element))
+    return plain(resistance_on_k2_axis(mass[..., np.newaxis], element))
 
 
-def _resistance(mass_kg: Floats, element: ParticleFilter) -> Floats:
+def resistance_on_k2_axis(mass_kg: Floats, element: ParticleFilter) -> Floats:
     """Pa s/m3, for a mass that has the K2 axis already."""
     flow = np.asarray(element.test_flow_m3_s, dtype=np.float64)[..., np.newaxis]
     pressure = pressure_drop_pa(
@@ -300,116 +291,3 @@ def time_to_limit_s(
     rate = _mass_rate_kg_s(conc_kg_m3, minute_volume_m3_s, efficiency, leak_share=leak_share)
     rate = require("mass collected per second", rate, above=0.0)
     return plain(mass_to_limit_kg(element, limit_pa=limit_pa) / rate[..., np.newaxis])
-
-
-def time_behind_seal_s(
-    mass_kg: ArrayLike,
-    *,
-    conc_kg_m3: ArrayLike,
-    minute_volume_m3_s: ArrayLike,
-    element: ParticleFilter,
-    seal: Seal,
-    efficiency: ArrayLike = 1.0,
-) -> Floats:
-    """Time until the filter holds that mass while a growing share of the air leaks past it, s.
-
-    As the filter clogs the seal takes over some of the flow, so the filter loads ever more slowly.
-    The integral of dm / (C Q_filter E) is taken by quadrature, without stepping in time.
-
-    Args:
-        mass_kg: kg, 0 or more.
-        conc_kg_m3: inhalable or total dust outside, kg/m3, above 0.
-        minute_volume_m3_s: air breathed, m3/s, above 0; drawn at twice that during inhalation.
-        element: the filter; the answer has its low, likely and high K2 on the trailing axis.
-        seal: the gap.
-        efficiency: of the filter by mass, above 0 to 1.
-
-    Returns:
-        Seconds for low, likely and high K2 in that order (more resistance, more time).
-
-    Source: separable mass balance (computed).
-    """
-    mass = require("mass_kg", mass_kg, at_least=0.0)[..., np.newaxis]
-    intake = _Intake.of(conc_kg_m3, minute_volume_m3_s, efficiency)
-    return plain(_time_behind_seal(mass, intake, element=element, seal=seal))
-
-
-def mass_behind_seal_kg(
-    duration_s: ArrayLike,
-    *,
-    conc_kg_m3: ArrayLike,
-    minute_volume_m3_s: ArrayLike,
-    element: ParticleFilter,
-    seal: Seal,
-    efficiency: ArrayLike = 1.0,
-) -> Floats:
-    """Mass that the filter holds after a time while a growing share of the air leaks past it, kg.
-
-    Args:
-        duration_s: s, 0 or more.
-        conc_kg_m3: inhalable or total dust outside, kg/m3, above 0.
-        minute_volume_m3_s: air breathed, m3/s, above 0.
-        element: the filter; the answer has its low, likely and high K2 on the trailing axis.
-        seal: the gap.
-        efficiency: of the filter by mass, above 0 to 1.
-
-    Source: inverse of `time_behind_seal_s` by Newton; the time is a convex function of the mass.
-    """
-    target = require("duration_s", duration_s, at_least=0.0)[..., np.newaxis]
-    intake = _Intake.of(conc_kg_m3, minute_volume_m3_s, efficiency)
-    # With no leak at all the filter holds the most it can; Newton descends from there.
-    mass = target * intake.conc * intake.volume * intake.caught * np.ones(len(LIFE_ORDER))
-    for _ in range(NEWTON_STEPS):
-        late = _time_behind_seal(mass, intake, element=element, seal=seal) - target
-        step = late * _rate_behind_seal(mass, intake, element=element, seal=seal)
-        mass = np.maximum(mass - step, 0.0)
-        if np.all(np.abs(step) <= NEWTON_DONE * mass):
-            break
-    return plain(mass)
-
-
-@dataclass(frozen=True)
-class _Intake:
-    """What is drawn in, each with the K2 axis already."""
-
-    conc: Floats
-    volume: Floats
-    caught: Floats
-
-    @classmethod
-    def of(
-        cls, conc_kg_m3: ArrayLike, minute_volume_m3_s: ArrayLike, efficiency: ArrayLike
-    ) -> _Intake:
-        return cls(
-            require("conc_kg_m3", conc_kg_m3, above=0.0)[..., np.newaxis],
-            require("minute_volume_m3_s", minute_volume_m3_s, above=0.0)[..., np.newaxis],
-            require("efficiency", efficiency, above=0.0, at_most=1.0)[..., np.newaxis],
-        )
-
-
-def _rate_behind_seal(
-    mass_kg: Floats, intake: _Intake, *, element: ParticleFilter, seal: Seal
-) -> Floats:
-    """kg/s into the filter when it holds that mass."""
-    state = solve(
-        intake.volume / INSPIRATORY_DUTY,
-        resistance_pa_s_m3=_resistance(mass_kg, element),
-        seal=Seal(
-            leak_k=np.asarray(seal.leak_k)[..., np.newaxis],
-            exponent=np.asarray(seal.exponent)[..., np.newaxis],
-        ),
-    )
-    return intake.conc * intake.volume * intake.caught * (1.0 - state.share)
-
-
-def _time_behind_seal(
-    mass_kg: Floats, intake: _Intake, *, element: ParticleFilter, seal: Seal
-) -> Floats:
-    points, weights = np.polynomial.legendre.leggauss(QUADRATURE_NODES)
-    mean_slowness = sum(
-        0.5
-        * weight
-        / _rate_behind_seal(0.5 * (point + 1.0) * mass_kg, intake, element=element, seal=seal)
-        for point, weight in zip(points, weights, strict=True)
-    )
-    return np.asarray(mass_kg * mean_slowness)

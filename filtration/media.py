@@ -23,7 +23,7 @@ from numpy.typing import ArrayLike
 
 from filtration.air import ROOM_AIR, Air
 from filtration.fibre import FIBRE_SLIP, Layer, Meeting, efficiency, kuwabara_factor
-from filtration.particles import BOLTZMANN_J_K, SALT, Lognormal, Material
+from filtration.particles import BOLTZMANN_J_K, SALT, Lognormal, Material, charge_shares
 from filtration.require import Floats, plain, require
 
 SMALLEST_M: Final = 5e-9
@@ -139,6 +139,43 @@ def penetration(
         swept = alpha * np.asarray(layer.thickness_m) / (math.pi * (1.0 - alpha) * meeting.df)
         depth = depth + 4.0 * swept * share
     return plain(np.exp(-depth))
+
+
+def neutralised_penetration(
+    layers: Sequence[Layer],
+    diameter_m: ArrayLike,
+    *,
+    face_velocity_m_s: ArrayLike,
+    air: Air = ROOM_AIR,
+    material: Material = SALT,
+    family: str = "lee-liu",
+) -> Floats:
+    """Penetration of particles at charge equilibrium, each charge state on its own, 0 to 1.
+
+    A certification aerosol is neutralised, which leaves many particles charged; taking them all as
+    uncharged, as `penetration` does by default, errs to the safe side.
+
+    Args:
+        layers: in a row, 1 or more; their fields broadcast with all other arguments.
+        diameter_m: physical diameter, m, above 0 to 100e-6.
+        face_velocity_m_s: m/s, above 0.
+        air: the air.
+        material: of the particles; its charge is replaced by the equilibrium.
+        family: of single-fibre formulas.
+
+    Source: Boltzmann equilibrium (Hinds 1999, eq 15.30, memory) over `penetration`.
+    """
+    numbers, shares = charge_shares(diameter_m, temperature_k=air.temperature_k)
+    velocity = require("face_velocity_m_s", face_velocity_m_s, above=0.0)
+    by_charge = penetration(
+        [_with_last_axis(layer) for layer in _some(layers)],
+        np.asarray(diameter_m, dtype=np.float64)[..., np.newaxis],
+        face_velocity_m_s=velocity[..., np.newaxis],
+        air=_with_last_axis(air),
+        material=replace(_with_last_axis(material), charges=np.abs(numbers)),
+        family=family,
+    )
+    return plain(np.sum(by_charge * shares, axis=-1))
 
 
 def quality_factor_per_pa(penetration: ArrayLike, *, pressure_pa: ArrayLike) -> Floats:

@@ -1,23 +1,18 @@
 import numpy as np
 import pytest
-from scipy.integrate import solve_ivp
 
 from filtration import (
     CAKE_RESISTANCE,
     CakeResistance,
     DepthStage,
     ParticleFilter,
-    Seal,
     k2_endo_per_s,
     k2_from_used_filter_per_s,
     k2_kozeny_carman_per_s,
-    mass_behind_seal_kg,
     mass_collected_kg,
     mass_to_limit_kg,
     pressure_drop_pa,
     resistance_pa_s_m3,
-    solve,
-    time_behind_seal_s,
     time_to_limit_s,
     time_to_mass_s,
 )
@@ -158,42 +153,3 @@ def test_a_cake_of_one_size_is_the_same_by_both_formulas():
     np.testing.assert_allclose(
         k2_endo_per_s(3e-6, gsd=1.0, **grain), k2_kozeny_carman_per_s(3e-6, **grain)
     )
-
-
-def test_a_tight_seal_loads_like_no_leak_at_all():
-    element = make_filter()
-    masses = mass_behind_seal_kg(
-        8 * 3600.0,
-        conc_kg_m3=10 * MG,
-        minute_volume_m3_s=MODERATE,
-        element=element,
-        seal=Seal(0.0),
-    )
-    np.testing.assert_allclose(masses, 144 * MG)
-
-
-def test_mass_and_time_behind_a_leaking_seal_invert_each_other():
-    setting = {
-        "conc_kg_m3": 10 * MG,
-        "minute_volume_m3_s": MODERATE,
-        "element": make_filter(),
-        "seal": Seal(1e-6, 0.6),
-    }
-    times = time_behind_seal_s(60 * MG, **setting)
-    masses = [mass_behind_seal_kg(time, **setting)[index] for index, time in enumerate(times)]
-    np.testing.assert_allclose(masses, 60 * MG, rtol=1e-9)
-
-
-def test_loading_behind_a_seal_agrees_with_stepping_in_time():
-    element, seal = make_filter(), Seal(1e-6, 0.7)
-
-    def rate(_, mass):
-        resistance = resistance_pa_s_m3(mass[0], element=element)[2]
-        share = solve(2 * MODERATE, resistance_pa_s_m3=resistance, seal=seal).share
-        return [10 * MG * MODERATE * (1.0 - share)]
-
-    stepped = solve_ivp(rate, (0.0, 8 * 3600.0), [0.0], rtol=1e-10, atol=1e-14).y[0, -1]
-    ours = mass_behind_seal_kg(
-        8 * 3600.0, conc_kg_m3=10 * MG, minute_volume_m3_s=MODERATE, element=element, seal=seal
-    )[2]
-    np.testing.assert_allclose(ours, stepped, rtol=1e-7)

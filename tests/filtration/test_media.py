@@ -15,6 +15,7 @@ from filtration import (
     fit_line_charge_c_m,
     mechanisms,
     most_penetrating,
+    neutralised_penetration,
     penetration,
     quality_factor_per_pa,
     weighted_penetration,
@@ -179,3 +180,15 @@ def test_a_penetration_above_the_uncharged_web_needs_no_charge_and_is_refused():
 def test_warm_air_diffuses_particles_faster():
     cold, warm = (through([WEB], 0.02e-6, air=ROOM_AIR.at(kelvin)) for kelvin in (263.15, 313.15))
     assert warm < cold
+
+
+def test_a_neutralised_aerosol_passes_less_than_an_uncharged_one():
+    d = np.geomspace(20e-9, 1e-6, 30)
+    neutral = neutralised_penetration([ELECTRET], d, face_velocity_m_s=SPEED)
+    assert neutral.shape == d.shape
+    assert np.all(neutral < through([ELECTRET], d))
+
+
+def test_without_charge_on_the_fibres_the_charge_of_the_particles_does_not_count():
+    neutral = neutralised_penetration([WEB], 0.1e-6, face_velocity_m_s=SPEED)
+    assert neutral == pytest.approx(float(through([WEB], 0.1e-6)))

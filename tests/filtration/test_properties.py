@@ -152,6 +152,19 @@ def test_filter_and_gap_carry_the_whole_flow(flow, resistance, seal):
 
 
 @few
+@given(flows_m3_s, resistances, seals, within(1e2, 1e12))
+def test_a_valve_in_the_filter_path_never_lowers_pressure_or_leak(flow, resistance, seal, valve):
+    setting = {"resistance_pa_s_m3": resistance, "seal": seal}
+    plain, valved = solve(flow, **setting), solve(flow, valve_pa_s2_m6=valve, **setting)
+    assert valved.pressure_pa >= plain.pressure_pa * (1 - 1e-9)
+    assert valved.share >= plain.share * (1 - 1e-9)
+    through = flow * (1.0 - valved.share)
+    dropped = resistance * through + valve * through**2
+    # Where nearly all leaks, the small rest is a difference of large numbers.
+    assert valved.share > 0.999 or abs(dropped / valved.pressure_pa - 1.0) < 1e-6
+
+
+@few
 @given(flows_m3_s, resistances, seals, st.floats(1.01, 20.0))
 def test_a_filter_that_resists_more_never_leaks_less(flow, resistance, seal, times):
     shares_found = [
