@@ -186,7 +186,9 @@ def test_a_neutralised_aerosol_passes_less_than_an_uncharged_one():
     d = np.geomspace(20e-9, 1e-6, 30)
     neutral = neutralised_penetration([ELECTRET], d, face_velocity_m_s=SPEED)
     assert neutral.shape == d.shape
-    assert np.all(neutral < through([ELECTRET], d))
+    uncharged = through([ELECTRET], d)
+    assert np.all(neutral <= uncharged * (1 + 1e-12))
+    assert np.all(neutral[:10] < 0.95 * uncharged[:10])
 
 
 def test_without_charge_on_the_fibres_the_charge_of_the_particles_does_not_count():
