@@ -9,7 +9,7 @@ that the rule demands, or the judgement of a qualified hygienist. Smell is never
 ...     vapour_pressure_kpa=2.919, boiling_point_c=110.6,
 ... )
 >>> bed = Bed(GENERIC_CARBON, mass_g=60.0, area_cm2=100.0)
->>> at_work = Conditions(flow_l_min=30.0)
+>>> at_work = Conditions(flow_l_min=30.0, temperature_k=293.15, relative_humidity=0.5)
 >>> life = breakthrough_min(toluene, bed, conc_ppm=200.0, outlet_ppm=20.0, conditions=at_work)
 >>> round(float(life))
 632

@@ -136,8 +136,12 @@ class Bed:
 class Conditions:
     """What the cartridge meets. All fields broadcast with the concentrations.
 
+    Temperature and humidity have no default: warm or humid air shortens a life, so that leaving
+    them out would err to the long side.
+
     Attributes:
-        flow_l_min: mean flow, L/min, above 0; the minute volume when a person breathes.
+        flow_l_min: mean flow, L/min, above 0: the minute volume when a person breathes, the
+            blower's flow in a powered device.
         temperature_k: K, 250 to 330.
         relative_humidity: share of saturation, 0 to 0.95; there is no estimate beyond.
         pressure_pa: of the air, Pa, 3e4 to 1.2e5.
@@ -146,8 +150,8 @@ class Conditions:
     """
 
     flow_l_min: ArrayLike
-    temperature_k: ArrayLike = ROOM_K
-    relative_humidity: ArrayLike = 0.5
+    temperature_k: ArrayLike
+    relative_humidity: ArrayLike
     pressure_pa: ArrayLike = ATMOSPHERE_PA
     velocity_ratio: ArrayLike = 1.0
 

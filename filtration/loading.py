@@ -120,7 +120,8 @@ def mass_collected_kg(
 
     Args:
         conc_kg_m3: inhalable or total dust outside, kg/m3, 0 or more.
-        minute_volume_m3_s: air breathed, m3/s, 0 or more; all of it counts, in over the half cycle.
+        minute_volume_m3_s: air breathed, m3/s, 0 or more; in a powered device the blower's flow,
+            which loads the filter whether or not anybody breathes.
         duration_s: time worn, s, 0 or more.
         efficiency: of the filter by mass, 0 to 1; 1 is the safe value for loading.
         leak_share: leak flow over total flow, 0 to 1; 0 is the safe value for loading.

@@ -9,7 +9,8 @@ that the rule demands, or the judgement of a qualified hygienist. Smell is never
 ... )
 >>> life = life_interval(
 ...     [toluene], Bed(GENERIC_CARBON, mass_g=60.0, area_cm2=100.0), conc_ppm=200.0,
-...     outlet_ppm=20.0, conditions=Conditions(flow_l_min=30.0), rng=np.random.default_rng(7),
+...     outlet_ppm=20.0, rng=np.random.default_rng(7),
+...     conditions=Conditions(flow_l_min=30.0, temperature_k=293.15, relative_humidity=0.5),
 ... )
 >>> life.low_min < life.median_min < life.high_min
 True

@@ -159,7 +159,7 @@ def cartridges():
     """Breakthrough times of many cartridges, against one call each."""
     count, few = 100_000, 500
     conc, mass = spread(10.0, 1000.0, count), RNG.uniform(30.0, 120.0, count)
-    at_work = Conditions(flow_l_min=30.0)
+    at_work = Conditions(flow_l_min=30.0, temperature_k=293.15, relative_humidity=0.5)
 
     def lives(conc_ppm, mass_g):
         bed = Bed(GENERIC_CARBON, mass_g=mass_g, area_cm2=100.0)

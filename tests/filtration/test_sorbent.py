@@ -49,7 +49,8 @@ METHANOL = Vapour(
     boiling_point_c=64.482,
 )
 BED = Bed(GENERIC_CARBON, mass_g=60.0, area_cm2=100.0)
-AT_WORK = Conditions(flow_l_min=30.0)
+ROOM = {"temperature_k": 293.15, "relative_humidity": 0.5}
+AT_WORK = Conditions(flow_l_min=30.0, **ROOM)
 
 
 def life(*, conc=200.0, outlet=20.0, vapour=TOLUENE, bed=BED, **conditions):
@@ -58,7 +59,7 @@ def life(*, conc=200.0, outlet=20.0, vapour=TOLUENE, bed=BED, **conditions):
         bed,
         conc_ppm=conc,
         outlet_ppm=outlet,
-        conditions=Conditions(**{"flow_l_min": 30.0, **conditions}),
+        conditions=Conditions(**{"flow_l_min": 30.0, **ROOM, **conditions}),
     )
 
 
@@ -136,9 +137,18 @@ def test_humidity_leaves_all_to_50_percent_and_half_at_85(humidity, left):
     assert humidity_factor(humidity) == pytest.approx(left, abs=5e-4)
 
 
+def test_nobody_gets_a_life_without_saying_how_warm_and_humid_it_is():
+    with pytest.raises(TypeError, match="temperature_k.*relative_humidity"):
+        Conditions(flow_l_min=30.0)
+
+
+def test_warm_air_shortens_the_life():
+    assert life(temperature_k=308.15) < life()
+
+
 def test_no_life_is_estimated_above_95_percent_humidity():
     with pytest.raises(ValueError, match=r"^relative_humidity: 0\.97 .* 0 to 0\.95$"):
-        Conditions(flow_l_min=30.0, relative_humidity=0.97)
+        Conditions(flow_l_min=30.0, temperature_k=293.15, relative_humidity=0.97)
 
 
 def test_a_mixture_of_one_is_the_vapour_alone():
