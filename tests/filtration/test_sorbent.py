@@ -138,7 +138,7 @@ def test_humidity_leaves_all_to_50_percent_and_half_at_85(humidity, left):
 
 
 def test_nobody_gets_a_life_without_saying_how_warm_and_humid_it_is():
-    with pytest.raises(TypeError, match="temperature_k.*relative_humidity"):
+    with pytest.raises(TypeError, match=r"temperature_k.*relative_humidity"):
         Conditions(flow_l_min=30.0)
 
 
