@@ -18,6 +18,8 @@ from programme.roster.permissions import require
 
 SITE_LIST = "SITE"
 ROWS_A_WRITE = 500
+LARGEST = 1e6
+MINUTES_A_DAY = 1440
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -92,7 +94,24 @@ def _twin(sample: Sample) -> ValueError:
     )
 
 
+def _refuse_figures(sample: Sample) -> None:
+    """Refuse what cannot be; a NaN too, which one database would keep as nothing."""
+    where = f"{sample.result_as_reported} {sample.unit_as_reported}"
+    # Not `<=` and `>`: a NaN must be refused.
+    if not 0 < sample.value <= LARGEST:
+        raise ValueError(f"Result: {where} is not allowed; above 0 and at most 1 000 000")
+    if sample.lod is not None and not 0 < sample.lod <= LARGEST:
+        raise ValueError(
+            f"Detection limit: {sample.lod} is not allowed; above 0, at most 1 000 000"
+        )
+    if sample.is_censored and sample.lod is None:
+        raise ValueError(f"Detection limit: none; {where} is below detection and needs it")
+    if sample.minutes is not None and not 0 < sample.minutes <= MINUTES_A_DAY:
+        raise ValueError(f"Minutes: {sample.minutes} is not allowed; above 0 and at most 1440")
+
+
 def _prepare(sample: Sample, *, by: User) -> None:
+    _refuse_figures(sample)
     sample.fingerprint = fingerprint_of(sample)
     sample.recorded_by = by.username
 

@@ -52,7 +52,7 @@ def pressure_at_kpa(altitude_m: float) -> float:
     Raises:
         ValueError: outside that range, or NaN.
 
-    Source: ISO 2533:1975, Standard Atmosphere (verified against its printed 89.875 kPa at 1000 m).
+    Source: ISO 2533:1975, Standard Atmosphere, equal to ICAO Doc 7488 (from memory).
     """
     _require("altitude_m", altitude_m, within=(LOWEST_M, HIGHEST_M))
     ratio = 1 - LAPSE_K_M * altitude_m / SEA_LEVEL_K
