@@ -107,7 +107,7 @@ def _royston_weights(m: Floats, n: Floats) -> Floats:
     weight = m / np.sqrt(rest)[:, None]
     weight[row, last], weight[row, 0] = a_last, -a_last
     weight[row, following], weight[row, 1] = a_next, -a_next
-    return weight
+    return np.asarray(weight)
 
 
 def _royston_p(w: Floats, n: Floats) -> Floats:
@@ -122,4 +122,4 @@ def _royston_p(w: Floats, n: Floats) -> Floats:
     mean = np.where(is_small, polyval(n, SMALL_MEAN), polyval(log_n, LARGE_MEAN))
     log_sd = np.where(is_small, polyval(n, SMALL_LOG_SD), polyval(log_n, LARGE_LOG_SD))
     p = ndtr(-(y - mean) / np.exp(log_sd))
-    return np.where(is_beyond, 0.0, p)
+    return np.where(is_beyond, 0.0, np.where(np.isfinite(w), p, np.nan))

@@ -163,7 +163,7 @@ def workers_to_sample(n_workers: int | None, *, top_share: float, conf: float) -
     share = float(require("top_share", top_share, above=0.0, below=1.0))
     miss = 1.0 - float(require("conf", conf, above=0.0, below=1.0))
     if n_workers is None:
-        return ceil(np.log(miss) / np.log1p(-share))
+        return int(ceil(np.log(miss) / np.log1p(-share)))
     size = int(require("n_workers", n_workers, at_least=1))
     top = max(1, round(share * size))
     drawn = np.arange(1, size - top + 1, dtype=np.float64)

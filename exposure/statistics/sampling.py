@@ -173,8 +173,8 @@ def twa(
     value, low, high = filled.get(gap_rule, (top, 0.0, top))
     divisor = exposed if reference_minutes is None else reference_minutes
     divisor = float(require("reference_minutes", divisor, above=0.0))
-    ends = ((dose + level * gap) / divisor for level in (value, low, high))
-    return Average(*ends, sampled_fraction=float(t.sum()) / exposed)
+    value, low, high = ((dose + level * gap) / divisor for level in (value, low, high))
+    return Average(value, low, high, sampled_fraction=float(t.sum()) / exposed)
 
 
 def size_fraction(diameter_um: ArrayLike, kind: str) -> Floats:

@@ -336,7 +336,7 @@ RECIPES = {
     ),
     "posterior_x95_quantile": _x95_quantile,
     "prob_x95_over": lambda g: _posterior(g, multiples=(g["multiple"],)).p_over[:, 0],
-    "prior_gsd_median": lambda g: math.exp(PRIORS["weak"].median_sigma),
+    "prior_gsd_median": lambda _: math.exp(PRIORS["weak"].median_sigma),
     "prior_gsd_quantile": _prior_quantile,
     "hazard_ratio_default": lambda g: describe(g.batch, g["limit"]).ratio,
     "hazard_ratio_conservative": lambda g: describe(g.batch, g["limit"]).ratio95,
