@@ -123,11 +123,16 @@ def x95_limit(batch: Batch, *, conf: float, method: str = "profile") -> Floats:
     Args:
         batch: G groups, with or without nondetects.
         conf: above 0.5 and below 1.
-        method: "profile" is the likelihood ratio with the chi-square quantile: known to cover a
-            little less than it says (0.92 to 0.94 of the cases for 0.95). "calibrated" asks for
-            the likelihood ratio that the exact tolerance limit has in complete data of that size,
-            so that it equals `lognormal.utl` when nothing is censored. "pivot" simulates; it needs
-            the detection limit of detects too and is NaN without it.
+        method: "profile" is the likelihood ratio with the chi-square quantile, and covers less
+            than it says. "calibrated" asks for the likelihood ratio that the exact tolerance limit
+            has in complete data of that size, so that it equals `lognormal.utl` when nothing is
+            censored. "pivot" simulates; it needs the detection limit of detects too and is NaN
+            without it.
+
+    Valid: simulated groups of 6 to 20 results, a third to 70 % below detection, GSD 2 to 3, were
+        covered in 0.90 to 0.93 of the cases for 0.95 and 0.60 to 0.67 for 0.70 by "profile"; in
+        0.95 to 0.97 and 0.71 to 0.77 by "calibrated" (4000 groups a line; groups under three
+        detects left out).
 
     Source: likelihood ratio (Wilks); type-I generalised pivot of Krishnamoorthy and Mathew;
         "calibrated" is our own small-sample correction of the first.

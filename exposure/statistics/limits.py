@@ -8,7 +8,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass
-from math import ceil
+from math import ceil, log, log1p
 from types import MappingProxyType
 from typing import Final
 
@@ -163,7 +163,7 @@ def workers_to_sample(n_workers: int | None, *, top_share: float, conf: float) -
     share = float(require("top_share", top_share, above=0.0, below=1.0))
     miss = 1.0 - float(require("conf", conf, above=0.0, below=1.0))
     if n_workers is None:
-        return int(ceil(np.log(miss) / np.log1p(-share)))
+        return ceil(log(miss) / log1p(-share))
     size = int(require("n_workers", n_workers, at_least=1))
     top = max(1, round(share * size))
     drawn = np.arange(1, size - top + 1, dtype=np.float64)

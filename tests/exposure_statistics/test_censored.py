@@ -1,6 +1,6 @@
 import numpy as np
 import pytest
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 from scipy import stats
 from scipy.special import ndtri
@@ -116,6 +116,7 @@ values_strategy = st.lists(
 )
 
 
+@settings(deadline=None)
 @given(values_strategy, st.floats(1e-6, 1e6))
 def test_a_fit_exists_for_both_units_or_for_neither_and_shifts_with_the_unit(results, factor):
     values = np.array([value for value, _ in results])
@@ -128,6 +129,7 @@ def test_a_fit_exists_for_both_units_or_for_neither_and_shifts_with_the_unit(res
         np.testing.assert_allclose(b.mu - a.mu, np.log(factor), atol=1e-4 * (1 + a.sigma[0]))
 
 
+@settings(deadline=None)
 @given(values_strategy)
 def test_the_upper_limit_is_never_below_the_estimate(results):
     values = np.array([value for value, _ in results])

@@ -2,7 +2,7 @@
 
 import numpy as np
 import pytest
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from exposure.statistics.bayes import posterior
@@ -247,6 +247,7 @@ def _batch(results, factor=1.0):
     return pack(values, [flag for _, flag in results], [0] * values.size, n_groups=1)
 
 
+@settings(deadline=None)
 @given(group_strategy)
 def test_every_sound_group_gets_a_ratio_in_order_of_confidence(results):
     found = describe(_batch(results), 1.0)
@@ -257,6 +258,7 @@ def test_every_sound_group_gets_a_ratio_in_order_of_confidence(results):
     assert not found.governing[0] < found.highest[0]
 
 
+@settings(deadline=None)
 @given(group_strategy, st.sampled_from([1e-9, 1e-3, 7.0, 1e6]))
 def test_results_and_limit_in_another_unit_give_the_same_ratio(results, factor):
     plain, scaled = describe(_batch(results), 1.0), describe(_batch(results, factor), factor)
@@ -264,6 +266,7 @@ def test_results_and_limit_in_another_unit_give_the_same_ratio(results, factor):
     assert scaled.basis[0] == plain.basis[0]
 
 
+@settings(deadline=None)
 @given(group_strategy, st.integers(0, 13))
 def test_a_higher_highest_result_never_lowers_the_governing_statistic_below_it(results, place):
     raised = list(results)

@@ -51,7 +51,7 @@ def test_arrays_of_different_length_are_refused():
 
 def test_buckets_hold_every_group_with_results_once():
     batch = batch_of([1.0] * 3, [], [1.0] * 30, [1.0] * 4)
-    parts = dict((tuple(rows), part.mask.shape[1]) for rows, part in buckets(batch))
+    parts = {tuple(rows): part.mask.shape[1] for rows, part in buckets(batch)}
     assert parts == {(0, 3): 4, (2,): 30}
 
 
