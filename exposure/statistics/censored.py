@@ -125,9 +125,9 @@ def x95_limit(batch: Batch, *, conf: float, method: str = "profile") -> Floats:
         conf: above 0.5 and below 1.
         method: "profile" is the likelihood ratio with the chi-square quantile, and covers less
             than it says. "calibrated" asks for the likelihood ratio that the exact tolerance limit
-            has in complete data of that size, so that it equals `lognormal.utl` when nothing is
-            censored. "pivot" simulates; it needs the detection limit of detects too and is NaN
-            without it.
+            has in complete data of that size (`Batch.n_telling`), so that it equals
+            `lognormal.utl` when nothing is censored. "pivot" simulates; it needs the detection
+            limit of detects too and is NaN without it.
 
     Valid: simulated groups of 6 to 20 results, a third to 70 % below detection, GSD 2 to 3, were
         covered in 0.90 to 0.93 of the cases for 0.95 and 0.60 to 0.67 for 0.70 by "profile"; in
@@ -163,7 +163,7 @@ def quantile_limit(
     index = np.flatnonzero(fit.status == 0)
     data = evidence(batch).rows(index)
     if is_calibrated:
-        ratio = complete_data_ratio(batch.n[index], p=p, conf=conf)
+        ratio = complete_data_ratio(batch.n_telling[index], p=p, conf=conf)
     else:
         ratio = np.full(index.size, float(ndtri(conf)) ** 2)
     if index.size:

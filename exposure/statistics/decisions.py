@@ -220,7 +220,8 @@ def _kinds(batch: Batch) -> _Kinds:
     all_below = n_detected == 0
     identical = is_identical(batch)
     lognormal = is_complete(batch) & (n >= FEW_RESULTS) & ~identical
-    likelihood = (n_censored > 0) & (n >= FEW_RESULTS) & (n_detected >= FEW_DETECTS)
+    likelihood = (n_censored > 0) & (batch.n_telling >= FEW_RESULTS)
+    likelihood &= n_detected >= FEW_DETECTS
     likelihood &= (n_censored <= MOST_CENSORED * n) & (tobit(batch).status == 0)
     few = ~(all_below | identical | lognormal | likelihood)
     return _Kinds(lognormal, likelihood, few, all_below, identical)

@@ -84,6 +84,16 @@ class Batch:
         top = np.where(self.censored, self.bound, -np.inf).max(axis=1, initial=-np.inf)
         return np.where(np.isfinite(top) & self.is_sound, top, np.nan)
 
+    @cached_property
+    def n_telling(self) -> Ints:
+        """Results in each group without nondetects whose limit is above every detect, (G,).
+
+        "Below 5" tells next to nothing where all else is below 0.1; it must not make a group of
+        three results pass for one of six. Where nothing was detected all results count.
+        """
+        is_idle = self.censored & (self.bound > self.highest[:, None])
+        return np.asarray(self.n - is_idle.sum(axis=1))
+
     def rows(self, index: NDArray[np.int64] | Bools) -> Batch:
         """The same results for some of the groups, without columns that are only padding."""
         mask = self.mask[index]

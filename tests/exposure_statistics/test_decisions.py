@@ -161,6 +161,13 @@ def test_a_limit_above_all_detects_is_kept_out_of_the_highest_and_does_no_harm()
     np.testing.assert_allclose(found.x95, without.x95, rtol=0.15)
 
 
+def test_nondetects_that_tell_nothing_do_not_make_six_results_of_three():
+    found = described([0.1, 0.2, 0.4, "<9", "<9", "<9"])
+    assert found.basis[0] == "few results"
+    plain = described([0.1, 0.2, 0.4])
+    np.testing.assert_allclose(found.x95_upper70, plain.x95_upper70, rtol=0.05)
+
+
 def test_one_detect_among_nondetects_has_no_point_estimate():
     found = described(edge_case("one_detect"))
     assert found.basis[0] == "few results"

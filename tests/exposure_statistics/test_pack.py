@@ -59,3 +59,8 @@ def test_leaving_out_the_highest_takes_one_detect_a_group():
     left = without_highest(batch_of([1.0, 9.0, "<20"], ["<1"], []))
     assert left.n.tolist() == [2, 1, 0]
     assert left.highest.tolist()[0] == 1.0
+
+
+def test_a_nondetect_above_every_detect_tells_nothing():
+    batch = batch_of([0.1, "<0.05", "<0.1", "<0.2"], ["<1", "<2"], [])
+    assert batch.n_telling.tolist() == [3, 2, 0]
