@@ -55,6 +55,15 @@ class Property:
     mark: str
 
 
+@dataclass(frozen=True)
+class LimitRow:
+    """One limit: whether the site is held to its list, and whether it has ended."""
+
+    limit: ExposureLimit
+    is_held: bool
+    is_over: bool
+
+
 def _properties(agent: Agent, need: str) -> list[Property]:
     rows: list[tuple[str, Any, str, str]] = [
         ("Immediately dangerous (IDLH) from", agent.idlh_value, agent.idlh_unit, "idlh"),
@@ -145,10 +154,9 @@ def agents(request: SiteRequest) -> HttpResponse:
     ]
     page = page_asked(request, rows)
     pack = load(request.site.rule_pack)
-    for agent in page.object_list:
-        agent.need = need_of(agent, pack)
     context = {
         "page": page,
+        "rows": [(one, need_of(one, pack)) for one in page.object_list],
         "heads": heads,
         "asked": asked,
         "sort": sort,
@@ -174,14 +182,19 @@ def agent(request: SiteRequest, pk: int) -> HttpResponse:
     one = agent_of(request, pk)
     pack = load(request.site.rule_pack)
     held = {*pack.limit_lists, *request.site.adopted_limit_lists, actions.SITE_LIST}
-    limits = list(
+    rows = (
         ExposureLimit.objects.at(request.site)
         .filter(agent=one)
         .order_by("list_code", "kind", "fraction", "value")
     )
-    for limit in limits:
-        limit.is_held = limit.list_code in held
-        limit.is_over = limit.withdrawn_on is not None and limit.withdrawn_on <= request.on
+    limits = [
+        LimitRow(
+            limit,
+            is_held=limit.list_code in held,
+            is_over=limit.withdrawn_on is not None and limit.withdrawn_on <= request.on,
+        )
+        for limit in rows
+    ]
     context = {
         "agent": one,
         "limits": limits,

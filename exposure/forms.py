@@ -6,6 +6,7 @@ from typing import Any
 
 from crispy_forms.layout import Field
 from django import forms
+from django.http import QueryDict
 
 from exposure.models import Agent, Sample, TaskAgent, Unit
 from exposure.plausible import findings, former_results
@@ -54,7 +55,8 @@ class KeepingForm(AskingForm):
         for field, says in self._questions:
             self.add_error(field, says)
         self._show_tick()
-        data = self.data.copy()
+        data = QueryDict(mutable=True)
+        data.update(self.data)
         data[self.add_prefix("asked")] = digest
         data.pop(self.add_prefix("is_meant"), None)
         self.data = data

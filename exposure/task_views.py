@@ -75,7 +75,8 @@ def _task_agent_form(request: SiteRequest, row: TaskAgent) -> HttpResponse:
 
 def _task_agent(request: SiteRequest, pk: int) -> TaskAgent:
     rows = TaskAgent.objects.for_user(request.user).at(request.site)
-    return get_object_or_404(rows.select_related("task__site", "agent"), pk=pk)
+    row: TaskAgent = get_object_or_404(rows.select_related("task__site", "agent"), pk=pk)
+    return row
 
 
 @site_page("tasks")

@@ -4,19 +4,19 @@ import math
 import re
 
 from exposure.models import Agent, Unit
+from exposure.statistics.units import mg_m3_to_ppm, molar_volume_l, ppm_to_mg_m3
 from programme.roster.models import Site
 
-# Molar gas constant, J/(mol K) = L kPa/(mol K). Source: CODATA 2018 (exact since the 2019 SI).
-GAS_CONSTANT = 8.314462618
-ZERO_CELSIUS_K = 273.15
+# Source: conventional millimetre of mercury, 133.322 Pa (BIPM, SI brochure, 8th ed., table 8).
+KPA_A_MMHG = 0.133322
 # Standard atmosphere below 11 km. Source: ISO 2533:1975, equal to ICAO Doc 7488/3 (1993).
 SEA_LEVEL_KPA = 101.325
 SEA_LEVEL_K = 288.15
 LAPSE_K_M = 0.0065
 PRESSURE_EXPONENT = 5.25588
 LOWEST_M, HIGHEST_M = -2000, 11000
-COLDEST_C, WARMEST_C = -60, 100
-THINNEST_KPA, DENSEST_KPA = 20, 150
+COLDEST_C, WARMEST_C = -50, 100
+THINNEST_KPA, DENSEST_KPA = 40, 119
 
 # Divisors and multipliers, kept apart so that 250 ug/m3 is exactly 0.25 mg/m3.
 _MG, _PPM, _FIBRES = Unit.MG_M3, Unit.PPM, Unit.F_CM3
@@ -70,8 +70,8 @@ def molar_volume_l_mol(*, temperature_c: float, pressure_kpa: float) -> float:
     """Volume of one mole of an ideal gas, L/mol.
 
     Args:
-        temperature_c: °C, -60 to 100.
-        pressure_kpa: kPa, 20 to 150.
+        temperature_c: °C, -50 to 100.
+        pressure_kpa: kPa, 40 to 119.
 
     Raises:
         ValueError: an argument is out of range or NaN.
@@ -80,7 +80,7 @@ def molar_volume_l_mol(*, temperature_c: float, pressure_kpa: float) -> float:
     """
     _require("temperature_c", temperature_c, within=(COLDEST_C, WARMEST_C))
     _require("pressure_kpa", pressure_kpa, within=(THINNEST_KPA, DENSEST_KPA))
-    return GAS_CONSTANT * (temperature_c + ZERO_CELSIUS_K) / pressure_kpa
+    return float(molar_volume_l(temperature_c, pressure_kpa / KPA_A_MMHG))
 
 
 def site_molar_volume_l_mol(site: Site) -> float:
@@ -119,9 +119,10 @@ def convert(value: float, agent: Agent, *, source: str, target: str, molar_volum
     if start == end:
         return value
     _refuse_conversion(agent, source=start, target=end)
+    change = ppm_to_mg_m3 if start == _PPM else mg_m3_to_ppm
+    # A missing molar mass was refused above; NaN would be refused too.
     mass = agent.molar_mass_g_mol or math.nan
-    mg_m3_a_ppm = mass / molar_volume
-    return value * mg_m3_a_ppm if start == _PPM else value / mg_m3_a_ppm
+    return float(change(value, mass, molar_volume_l=molar_volume))
 
 
 def _plain(unit_text: str) -> str:

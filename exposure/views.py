@@ -350,4 +350,5 @@ def _sample_url(one: Sample) -> str:
 def task_at(request: SiteRequest, pk: int) -> Task:
     """A task of the request's own site, or not found."""
     rows = Task.objects.for_user(request.user).at(request.site).select_related("site")
-    return get_object_or_404(rows, pk=pk)
+    task: Task = get_object_or_404(rows, pk=pk)
+    return task
