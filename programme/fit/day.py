@@ -33,7 +33,7 @@ class HeadForm(forms.Form):
 
 @dataclass(frozen=True)
 class Cell:
-    """One box of a row: its name, what was typed, and for whom and what it stands."""
+    """One box of a row: its name, its exercise and what was typed."""
 
     name: str
     label: str
@@ -111,10 +111,7 @@ class DaySheet:
         def value(name: str) -> str:
             return str(self.typed.get(f"r{number}_{name}", "")).strip()
 
-        cells = [
-            Cell(f"r{number}_{slot.key}", f"{slot.label}, row {number}", value(slot.key))
-            for slot in self.slots
-        ]
+        cells = [Cell(f"r{number}_{slot.key}", slot.label, value(slot.key)) for slot in self.slots]
         return Line(number, value("worker"), value("size"), cells, value("is_passed"))
 
     def _typed_lines(self) -> Iterator[Line]:

@@ -49,18 +49,13 @@ class Chosen:
         return f"worker={self.worker.pk}&size={self.size.pk}&protocol={self.protocol.id}"
 
 
-def _sizes_by_facepiece(sizes: Iterable[FacepieceSize]) -> list[tuple[str, Any]]:
-    groups: dict[str, list[tuple[str, str]]] = {}
-    for size in sizes:
-        groups.setdefault(size.facepiece.name, []).append((str(size.pk), size.label))
-    return [("", "choose a size"), *groups.items()]
-
-
 class ChoiceForm(forms.Form):
     """Worker, facepiece with size, and protocol; sent by GET, so the address keeps the choice."""
 
     worker = forms.ModelChoiceField(Worker.objects.none(), empty_label="choose a worker")
-    size = forms.ModelChoiceField(FacepieceSize.objects.none(), label="Facepiece and size")
+    size = forms.ModelChoiceField(
+        FacepieceSize.objects.none(), label="Facepiece and size", empty_label="choose a size"
+    )
     protocol = forms.ChoiceField(required=False)
 
     def __init__(self, data: Any, *, site: Site, pack: RulePack, on: date) -> None:
@@ -78,7 +73,6 @@ class ChoiceForm(forms.Form):
             .order_by("facepiece__name", "order", "label")
         )
         size_box.queryset = sizes
-        size_box.choices = _sizes_by_facepiece(sizes)
         self.protocols = list(pack.protocols)
         kind = self._kind(sizes)
         if kind:
