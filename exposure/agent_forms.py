@@ -14,6 +14,7 @@ from programme.roster.models import Site
 
 # A limit this many times away from another of its kind is asked about: a unit may have slipped.
 SLIP = 300.0
+KINDS = {"TWA": "time-weighted average", "STEL": "short-term average", "C": "ceiling"}
 IDLH_UNITS = (("", "not known"), ("mg/m3", "mg/m³"), ("ppm", "ppm"))
 
 
@@ -108,7 +109,7 @@ class AgentForm(KeepingForm):
 class LimitForm(KeepingForm):
     """A limit of the site's own for one agent."""
 
-    kind = forms.ChoiceField(choices=ExposureLimit.Kind.choices, label="Kind")
+    kind = forms.ChoiceField(choices=tuple(KINDS.items()), label="Kind")
     fraction = forms.ChoiceField(choices=Fraction.choices, label="Fraction")
     value = MeasuredField(label="Limit", above=0, at_most=1e6)
     unit = forms.ChoiceField(choices=(("", "choose"), *Unit.choices), label="Unit")

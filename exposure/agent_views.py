@@ -11,7 +11,7 @@ from django.urls import reverse
 from django.views.decorators.http import require_GET, require_http_methods
 
 from exposure import actions
-from exposure.agent_forms import AgentForm, LimitForm
+from exposure.agent_forms import KINDS, AgentForm, LimitForm
 from exposure.models import Agent, ExposureLimit, Sure, TaskAgent
 from programme.export import csv_response
 from programme.roster.access import SiteRequest, site_page
@@ -38,11 +38,17 @@ HEADER = (
 )
 
 
+# From the surest to the least sure.
+WEAKER = (Sure.VERIFIED, Sure.COMPUTED, Sure.SITE, Sure.MEMORY)
+
+
 def _marks(column: str, agent: Agent) -> str:
-    """How sure one group of an agent's columns is, as it is shown."""
+    """How sure the columns joined by "+" are, the least sure of them, as it is shown."""
     if agent.site_id is not None:
         return str(Sure.SITE.label)
-    return str(Sure(agent.sure_by_column.get(column, agent.sure)).label)
+    known = [agent.sure_by_column[one] for one in column.split("+") if one in agent.sure_by_column]
+    weakest = max(known or [agent.sure], key=WEAKER.index)
+    return str(Sure(weakest).label)
 
 
 @dataclass(frozen=True)
@@ -63,6 +69,11 @@ class LimitRow:
     is_held: bool
     is_over: bool
 
+    @property
+    def kind(self) -> str:
+        """The kind of limit without a time: some averages are over 10 h, not 8."""
+        return KINDS[self.limit.kind]
+
 
 def _properties(agent: Agent, need: str) -> list[Property]:
     rows: list[tuple[str, Any, str, str]] = [
@@ -75,7 +86,7 @@ def _properties(agent: Agent, need: str) -> list[Property]:
         ("Warning by smell or irritation", agent.warning_properties, "", "warning"),
         ("Irritates the eyes", agent.get_eye_irritant_display(), "", "eye"),
         ("Taken up through the skin", agent.get_skin_notation_display(), "", "skin"),
-        ("Carcinogen", agent.carcinogen_note, "", "carcinogen"),
+        ("Carcinogen", agent.carcinogen_note, "", "carcinogen+iarc"),
     ]
     return [
         Property(name, value, unit, _marks(column, agent))
