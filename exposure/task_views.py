@@ -13,7 +13,7 @@ from exposure.reference import typical_sizes
 from exposure.task_forms import TaskAgentForm, TaskForm
 from exposure.views import task_at
 from programme.roster.access import SiteRequest, site_page
-from programme.roster.asking import ReasonForm
+from programme.roster.asking import ReasonForm, record_asked
 
 
 def _answer(request: SiteRequest, template: str, context: dict[str, Any]) -> HttpResponse:
@@ -51,8 +51,7 @@ def task_edit(request: SiteRequest, pk: int) -> HttpResponse:
 
 def _task_agent_form(request: SiteRequest, row: TaskAgent) -> HttpResponse:
     is_new = row.pk is None
-    asked = request.GET.get("agent", "")
-    initial = {"agent": asked} if is_new and asked.isdecimal() else None
+    initial = {"agent": record_asked(request, "agent")} if is_new else None
     form = TaskAgentForm(request.POST or None, instance=row, sizes=typical_sizes(), initial=initial)
     if form.is_valid():
         try:

@@ -17,7 +17,7 @@ from programme.export import csv_response
 from programme.ledger.models import Entry
 from programme.measured import Refused, read_date
 from programme.roster.access import SiteRequest, site_page
-from programme.roster.asking import Head, ReasonForm, page_asked, sort_asked
+from programme.roster.asking import Head, ReasonForm, page_asked, record_asked, sort_asked
 
 SORTS = {
     "date": "sampled_on",
@@ -103,8 +103,8 @@ def _asked(request: SiteRequest) -> dict[str, Any]:
     end, last = _day(request, "to", "Sampled to")
     return {
         "q": get("q", "").strip()[:120],
-        "task": int(get("task", "")) if get("task", "").isdecimal() else None,
-        "agent": int(get("agent", "")) if get("agent", "").isdecimal() else None,
+        "task": record_asked(request, "task"),
+        "agent": record_asked(request, "agent"),
         "below": below if below in {"yes", "no"} else "",
         "where": where if where in Sample.Where.values else "",
         "state": state if state in STATES else "standing",
@@ -261,17 +261,11 @@ def sample(request: SiteRequest, pk: int) -> HttpResponse:
 
 def _first(request: SiteRequest) -> dict[str, Any]:
     """What a new form shows: the group a link came from, and the last campaign's usual answers."""
-    found: dict[str, Any] = {}
-    group = request.GET.get("task_agent", "")
-    task = request.GET.get("task", "")
-    if group.isdecimal():
-        found["task_agent"] = group
-    elif task.isdecimal():
+    group, task = record_asked(request, "task_agent"), record_asked(request, "task")
+    if group is None and task is not None:
         first = task_agents_at(request.site).filter(task=task).first()
-        found["task_agent"] = first.pk if first else None
-    if request.GET.get("worker", "").isdecimal():
-        found["worker"] = request.GET["worker"]
-    return found
+        group = first.pk if first else None
+    return {"task_agent": group, "worker": record_asked(request, "worker")}
 
 
 @site_page("samples")

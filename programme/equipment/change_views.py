@@ -13,7 +13,7 @@ from programme.equipment.forms import FilterChangeForm
 from programme.equipment.models import Assembly, FilterChange
 from programme.export import csv_response
 from programme.roster.access import SiteRequest, site_page
-from programme.roster.asking import Head, ReasonForm, page_asked, sort_asked
+from programme.roster.asking import Head, ReasonForm, page_asked, record_asked, sort_asked
 from programme.roster.models import Worker, active_on
 
 SORTS = {"at": "fitted_at", "worker": "worker__name", "assembly": "assembly__name"}
@@ -39,11 +39,10 @@ def _rows(request: SiteRequest) -> QuerySet[FilterChange]:
 
 
 def _asked(request: SiteRequest) -> dict[str, Any]:
-    worker, assembly = request.GET.get("worker", ""), request.GET.get("assembly", "")
     return {
         "q": request.GET.get("q", "").strip()[:120],
-        "worker": int(worker) if worker.isdecimal() else None,
-        "assembly": int(assembly) if assembly.isdecimal() else None,
+        "worker": record_asked(request, "worker"),
+        "assembly": record_asked(request, "assembly"),
         "state": "all" if request.GET.get("state") == "all" else "standing",
     }
 
@@ -117,18 +116,13 @@ def changes(request: SiteRequest) -> HttpResponse:
 
 def _first(request: SiteRequest) -> dict[str, Any]:
     """The worker a link came from, and the assembly that worker wears if there is just one."""
-    found: dict[str, Any] = {}
-    worker, assembly = request.GET.get("worker", ""), request.GET.get("assembly", "")
-    if worker.isdecimal():
-        found["worker"] = worker
-        one = Worker.objects.at(request.site).filter(pk=worker).first()
-        if one is not None:
-            worn = one.crews.filter(active_on(request.site.today()), assembly__isnull=False)
-            kinds = set(worn.values_list("assembly", flat=True))
-            found["assembly"] = kinds.pop() if len(kinds) == 1 else None
-    if assembly.isdecimal():
-        found["assembly"] = assembly
-    return found
+    pk, assembly = record_asked(request, "worker"), record_asked(request, "assembly")
+    worker = Worker.objects.at(request.site).filter(pk=pk).first() if pk else None
+    if worker is not None and assembly is None:
+        crews = worker.crews.filter(active_on(request.site.today()), assembly__isnull=False)
+        worn = set(crews.values_list("assembly", flat=True))
+        assembly = worn.pop() if len(worn) == 1 else None
+    return {"worker": pk, "assembly": assembly}
 
 
 @site_page("assign")

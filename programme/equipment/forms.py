@@ -1,5 +1,6 @@
 """What is typed about respirators: facepieces, filters and cartridges, assemblies, changes."""
 
+import re
 import zoneinfo
 from datetime import datetime, timedelta
 from typing import Any
@@ -20,6 +21,7 @@ MOST_STOCK = 1_000_000
 # A filter change entered later than this is asked about.
 LONG_AGO = timedelta(days=366)
 SHIFTS_A_DAY = 3
+_MOMENT = re.compile(r"(?:19|20)[0-9]{2}-[0-9]{2}-[0-9]{2}[T ][0-9]{2}:[0-9]{2}(?::[0-9]{2})?")
 
 
 class WholeField(MeasuredField):
@@ -267,13 +269,17 @@ class MomentField(forms.CharField):
 
     def clean(self, value: Any) -> Any:
         text = super().clean(value)
+        # A day alone would be read as midnight.
+        match = _MOMENT.fullmatch(text)
         try:
-            moment = datetime.fromisoformat(text)
-        except ValueError as error:
+            moment = datetime.fromisoformat(text) if match else None
+        except ValueError:
+            moment = None
+        if moment is None:
             raise forms.ValidationError(
                 f"{self.label}: {text} is not a day and time; write it like 2026-03-02 06:00."
-            ) from error
-        return moment if moment.tzinfo else moment.replace(tzinfo=self.zone)
+            )
+        return moment.replace(tzinfo=self.zone)
 
 
 class FilterChangeForm(AskingForm):

@@ -14,7 +14,7 @@ from programme.equipment import actions
 from programme.equipment.forms import AssemblyForm, ElementForm, FacepieceForm
 from programme.equipment.models import Assembly, Element, Facepiece
 from programme.roster.access import SiteRequest, site_page
-from programme.roster.asking import ReasonForm
+from programme.roster.asking import ReasonForm, record_asked
 from programme.rulepack.load import load
 
 
@@ -62,7 +62,7 @@ def _save(part: Any, form: Any, *, by: Any) -> None:
 def _part_form(request: SiteRequest, kind: str, part: Any) -> HttpResponse:
     what, is_new, shown_name = PARTS[kind], part.pk is None, str(part.name)
     rest = {} if kind == "facepiece" else {"pack": load(request.site.rule_pack)}
-    initial = {"facepiece": request.GET.get("facepiece"), "element": request.GET.get("element")}
+    initial = {name: record_asked(request, name) for name in ("facepiece", "element")}
     form = what.form(
         request.POST or None, instance=part, initial=initial if is_new else None, **rest
     )

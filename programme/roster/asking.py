@@ -15,6 +15,8 @@ from django.utils.html import format_html
 from django.utils.safestring import SafeString
 
 ROWS_A_PAGE = 100
+# Digits of the largest record number that any database keeps.
+LONGEST_NUMBER = 18
 Row = TypeVar("Row")
 
 
@@ -118,6 +120,13 @@ def sort_asked(request: HttpRequest, allowed: Mapping[str, Any], default: str) -
     """The sort key in `?sort=`, with "-" for downwards; `default` for any that is not allowed."""
     asked = request.GET.get("sort", "")
     return asked if asked.lstrip("-") in allowed and asked.count("-") < 2 else default
+
+
+def record_asked(request: HttpRequest, name: str) -> int | None:
+    """The record number in `?name=`; None for any that cannot be one."""
+    asked = request.GET.get(name, "")
+    is_number = asked.isascii() and asked.isdecimal() and len(asked) <= LONGEST_NUMBER
+    return int(asked) if is_number else None
 
 
 def in_order(rows: Sequence[Row], sort: str, keys: Mapping[str, Callable[[Row], Any]]) -> list[Row]:

@@ -64,7 +64,7 @@ def test_a_change_is_stored_and_entered(page, typed, worn):
 
 def test_the_form_is_prefilled_from_the_worker(page, worn):
     form = page.get(url("filter_change") + f"?worker={worn[0].pk}").context["form"]
-    assert form["worker"].value() == str(worn[0].pk)
+    assert form["worker"].value() == worn[0].pk
     assert form["assembly"].value() == worn[1].pk
 
 
@@ -83,7 +83,10 @@ def test_clock_time_is_that_of_the_site(worn, typed, site, page):
         ({"assembly": "999999"}, "Select a valid choice"),
         ({"fitted_at": ""}, "required"),
         ({"fitted_at": "this morning"}, "this morning is not a day and time; write it like"),
-        ({"fitted_at": "2100-01-01T06:00"}, "lies in the future"),
+        ({"fitted_at": "2099-01-01T06:00"}, "lies in the future"),
+        ({"fitted_at": "2026-03-02"}, "is not a day and time"),
+        ({"fitted_at": "2026-02-30T06:00"}, "is not a day and time"),
+        ({"fitted_at": "0001-01-01T00:00"}, "is not a day and time"),
         ({"fitted_at": "2020-01-01T06:00"}, "is on the roster from 2024-01-08"),
         ({"shifts_used": "-1"}, "0 to 2000"),
         ({"shifts_used": "nan"}, "0 to 2000"),
