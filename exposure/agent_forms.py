@@ -5,11 +5,12 @@ from typing import Any
 
 from django import forms
 
-from exposure.cas import read_cas
+from exposure.cas import CheckDigitError, read_cas
 from exposure.forms import KeepingForm
 from exposure.models import Agent, ExposureLimit, Fraction, Unit, YesNoUnknown
 from programme.figures import near, unit_sign
 from programme.measured_fields import MeasuredField
+from programme.roster.asking import with_offer
 from programme.roster.models import Site
 
 # A limit this many times away from another of its kind is asked about: a unit may have slipped.
@@ -70,6 +71,9 @@ class AgentForm(KeepingForm):
             return ""
         try:
             number = read_cas(text)
+        except CheckDigitError as refused:
+            says = with_offer(f"{refused}.", "cas", refused.likely)
+            raise forms.ValidationError(says) from refused
         except ValueError as refused:
             raise forms.ValidationError(str(refused)) from refused
         known = Agent.objects.at(self.site).filter(key=number).first()

@@ -15,7 +15,7 @@ from exposure.agent_forms import KINDS, AgentForm, LimitForm
 from exposure.models import Agent, ExposureLimit, Sure, TaskAgent
 from programme.export import csv_response
 from programme.roster.access import SiteRequest, site_page
-from programme.roster.asking import Head, ReasonForm, page_asked, sort_asked
+from programme.roster.asking import Head, ReasonForm, page_asked, sort_asked, text_asked
 from programme.rulepack.load import load
 from programme.rulepack.pack import RulePack
 
@@ -146,7 +146,7 @@ def _csv(request: SiteRequest, rows: QuerySet[Agent]) -> HttpResponse:
 def agents(request: SiteRequest) -> HttpResponse:
     kind, whose = request.GET.get("kind", ""), request.GET.get("whose", "")
     asked = {
-        "q": request.GET.get("q", "").strip()[:120],
+        "q": text_asked(request, "q"),
         "kind": kind if kind in Agent.Kind.values else "",
         "whose": whose if whose in {"site", "used"} else "",
     }

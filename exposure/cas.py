@@ -16,11 +16,24 @@ def check_digit(digits: str) -> int:
     return sum(place * int(digit) for place, digit in enumerate(reversed(digits), start=1)) % 10
 
 
+class CheckDigitError(ValueError):
+    """A CAS number whose check digit is wrong.
+
+    Attributes:
+        likely: the number with the digit that belongs to the others.
+    """
+
+    def __init__(self, message: str, likely: str) -> None:
+        super().__init__(message)
+        self.likely = likely
+
+
 def read_cas(text: str) -> str:
     """The CAS number in `text`.
 
     Raises:
-        ValueError: not of the form 7439-92-1, or its check digit is wrong.
+        ValueError: not of the form 7439-92-1.
+        CheckDigitError: a ValueError; its check digit does not belong to its other digits.
     """
     bare = text.strip().replace("\u2010", "-").replace("\u2011", "-").replace("\u2013", "-")
     match = _SHAPE.fullmatch(bare)
@@ -32,8 +45,10 @@ def read_cas(text: str) -> str:
     first, second, last = match.groups()
     wanted = check_digit(first + second)
     if wanted != int(last):
-        raise ValueError(
+        likely = f"{first}-{second}-{wanted}"
+        raise CheckDigitError(
             f"CAS number: {bare} is not allowed; with these digits the last one must be {wanted} "
-            f"({first}-{second}-{wanted}): look for a slip"
+            f"({likely}): look for a slip",
+            likely,
         )
     return bare

@@ -13,7 +13,7 @@ from exposure.plausible import findings, former_results
 from exposure.units import normalise
 from programme.measured import Reading
 from programme.measured_fields import DayField, MeasuredField, ResultField
-from programme.roster.asking import AskingForm
+from programme.roster.asking import AskingForm, with_offer
 from programme.roster.models import Site, Worker
 
 EARLIEST = date(1970, 1, 1)
@@ -168,10 +168,11 @@ class SampleForm(KeepingForm):
             return found
         former = former_results(row, unit=sample.unit, without=self.old.pk if self.old else None)
         for one in findings(sample, today=self.today, former=former):
+            says = with_offer(one.says, *one.offer) if one.offer else one.says
             if one.is_question:
-                self.ask(one.field, one.says)
+                self.ask(one.field, says)
             else:
-                self.add_error(one.field, one.says)
+                self.add_error(one.field, says)
         if not self.errors:
             self.settle()
         self.sample = sample

@@ -8,11 +8,14 @@ from datetime import date
 
 from exposure.models import Sample, TaskAgent, Unit
 from programme.figures import near, unit_sign, up
+from programme.roster.asking import same_day_past
 
 # Flow times minutes may differ from the volume by this part; common practice.
 VOLUME_TOLERANCE = 0.05
 # Between a usual spread in one group (GSD under 7) and a unit that slipped by 1000.
 SLIP = 300.0
+# What a result a thousand times too high was most likely reported in.
+SMALLER_UNITS = {"mg/m3": "ug/m3", "ppm": "ppb"}
 LONGEST_SHORT_TERM_MIN = 30.0
 # Part of the shift from which a sample is commonly taken as full shift; common practice.
 FULL_SHIFT_PART = 0.7
@@ -20,11 +23,19 @@ FULL_SHIFT_PART = 0.7
 
 @dataclass(frozen=True)
 class Finding:
-    """One thing about a sample: refused, or asked and kept if it is meant."""
+    """One thing about a sample: refused, or asked and kept if it is meant.
+
+    Attributes:
+        field: the box it stands at.
+        says: names the value and what is allowed.
+        is_question: unlikely, not impossible.
+        offer: (box, value) that is most likely meant, or None.
+    """
 
     field: str
     says: str
     is_question: bool = False
+    offer: tuple[str, str] | None = None
 
 
 def _unit(sample: Sample) -> Iterable[Finding]:
@@ -35,6 +46,7 @@ def _unit(sample: Sample) -> Iterable[Finding]:
             "unit",
             f"Unit: {sample.unit_as_reported} is not allowed for {row.agent} as particles; "
             "it must be mg/m3 or ug/m3 (f/cm3 for fibres). ppm is for gases and vapours only.",
+            offer=("unit", "f/cm3" if row.agent.kind == "fibre" else "mg/m3"),
         )
     elif sample.unit == Unit.F_CM3 and row.agent.kind != "fibre":
         yield Finding(
@@ -54,7 +66,8 @@ def _dates(sample: Sample, *, today: date) -> Iterable[Finding]:
     day, task, worker = sample.sampled_on, sample.task_agent.task, sample.worker
     start = f"Sampled on: {day} is not allowed; "
     if day > today:
-        yield Finding("sampled_on", f"{start}it lies in the future, today is {today}.")
+        says = f"{start}it lies in the future, today is {today}."
+        yield Finding("sampled_on", says, offer=("sampled_on", str(same_day_past(day, today))))
     if day < task.active_from or (task.active_to and day >= task.active_to):
         until = f" to {task.active_to}" if task.active_to else ""
         yield Finding("sampled_on", f"{start}{task} is a task from {task.active_from}{until}.")
@@ -115,6 +128,7 @@ def _slip(sample: Sample, former: Iterable[float]) -> Iterable[Finding]:
         return
     sign = unit_sign(sample.unit)
     other = sample.value / 1000 if times > 1 else sample.value * 1000
+    smaller = SMALLER_UNITS.get(sample.unit_as_reported, "")
     how = f"{up(times)} times" if times > 1 else f"1/{up(1 / times)} of"
     yield Finding(
         "result",
@@ -122,6 +136,7 @@ def _slip(sample: Sample, former: Iterable[float]) -> Iterable[Finding]:
         f"middle of the group's former results, {near(middle)} {sign} ({len(logs)} of them). Did "
         f"a unit slip by 1000? That would make {near(other)} {sign}. Mend it, or tick below.",
         is_question=True,
+        offer=("unit", smaller) if times > 1 and smaller else None,
     )
 
 

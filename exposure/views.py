@@ -17,7 +17,14 @@ from programme.export import csv_response
 from programme.ledger.models import Entry
 from programme.measured import Refused, read_date
 from programme.roster.access import SiteRequest, site_page
-from programme.roster.asking import Head, ReasonForm, page_asked, record_asked, sort_asked
+from programme.roster.asking import (
+    Head,
+    ReasonForm,
+    page_asked,
+    record_asked,
+    sort_asked,
+    text_asked,
+)
 
 SORTS = {
     "date": "sampled_on",
@@ -102,7 +109,7 @@ def _asked(request: SiteRequest) -> dict[str, Any]:
     start, first = _day(request, "from", "Sampled from")
     end, last = _day(request, "to", "Sampled to")
     return {
-        "q": get("q", "").strip()[:120],
+        "q": text_asked(request, "q"),
         "task": record_asked(request, "task"),
         "agent": record_asked(request, "agent"),
         "below": below if below in {"yes", "no"} else "",

@@ -13,7 +13,14 @@ from programme.equipment.forms import FilterChangeForm
 from programme.equipment.models import Assembly, FilterChange
 from programme.export import csv_response
 from programme.roster.access import SiteRequest, site_page
-from programme.roster.asking import Head, ReasonForm, page_asked, record_asked, sort_asked
+from programme.roster.asking import (
+    Head,
+    ReasonForm,
+    page_asked,
+    record_asked,
+    sort_asked,
+    text_asked,
+)
 from programme.roster.models import Worker, active_on
 
 SORTS = {"at": "fitted_at", "worker": "worker__name", "assembly": "assembly__name"}
@@ -40,7 +47,7 @@ def _rows(request: SiteRequest) -> QuerySet[FilterChange]:
 
 def _asked(request: SiteRequest) -> dict[str, Any]:
     return {
-        "q": request.GET.get("q", "").strip()[:120],
+        "q": text_asked(request, "q"),
         "worker": record_asked(request, "worker"),
         "assembly": record_asked(request, "assembly"),
         "state": "all" if request.GET.get("state") == "all" else "standing",

@@ -13,7 +13,7 @@ from programme.equipment.models import Assembly, Element, Facepiece, FacepieceKi
 from programme.export import csv_response
 from programme.ledger.models import Entry
 from programme.roster.access import SiteRequest, site_page
-from programme.roster.asking import Head, in_order, page_asked, sort_asked
+from programme.roster.asking import Head, in_order, page_asked, sort_asked, text_asked
 from programme.roster.models import active_on
 from programme.rulepack.load import load
 from programme.rulepack.pack import RulePack
@@ -86,7 +86,7 @@ def _withdrawn(request: SiteRequest, state: str) -> Q:
 def _asked(request: SiteRequest) -> dict[str, str]:
     state, kind = request.GET.get("state", ""), request.GET.get("kind", "")
     return {
-        "q": request.GET.get("q", "").strip()[:120],
+        "q": text_asked(request, "q"),
         "state": state if state in STATES else "use",
         "kind": kind if kind in FacepieceKind.values else "",
     }

@@ -160,6 +160,24 @@ def test_the_unlikely_is_asked_and_kept_after_a_tick(page, typed, group, fields,
     assert Sample.objects.count() == 3
 
 
+@pytest.mark.parametrize(
+    ("fields", "offered"),
+    [
+        ({"result": "310"}, {"unit": "ug/m3"}),
+        ({"unit": "ppm"}, {"unit": "mg/m3"}),
+        ({"sampled_on": "2030-03-02"}, {"sampled_on": "2026-03-02"}),
+    ],
+    ids=["a unit too large", "a dust in ppm", "a year too late"],
+)
+def test_the_likeliest_meaning_is_offered_as_a_button(page, typed, group, fields, offered):
+    make_sample(group, 0.30)
+    html = page.post(url("sample_add"), typed | fields).content.decode()
+    (name, value) = next(iter(offered.items()))
+    assert re.search(f'<button[^>]*name="{name}" value="{value}"', html)
+    page.post(url("sample_add"), typed | fields | {name: [(typed | fields)[name], value]})
+    assert Sample.objects.count() == 2
+
+
 def test_a_tick_does_not_answer_a_question_that_was_not_asked(page, typed, group):
     make_sample(group, 0.30)
     answer = page.post(url("sample_add"), typed | {"span": "full", "minutes": "120"})
