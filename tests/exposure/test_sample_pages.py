@@ -123,8 +123,12 @@ def test_bad_input_is_refused_by_name_and_nothing_typed_is_lost(page, typed, fie
     [
         ({"active_from": DAY + timedelta(days=1)}, "is on the roster from 2026-03-03"),
         ({"active_to": DAY}, "is on the roster from 2024-01-08 to 2026-03-02"),
+        (
+            {"born_on": DAY + timedelta(days=1), "active_from": DAY + timedelta(days=2)},
+            "Ana was not born yet",
+        ),
     ],
-    ids=["not yet here", "no longer here"],
+    ids=["not yet here", "no longer here", "not yet born"],
 )
 def test_a_worker_must_have_been_there(page, typed, worker, site, says):
     one = make_worker(site, "Ana", **worker)
