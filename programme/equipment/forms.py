@@ -219,6 +219,9 @@ class AssemblyForm(forms.ModelForm):
             "approval_number": "Approval number",
             "maker_evidence": "Maker's evidence for a higher factor",
         }
+        help_texts = {
+            "element": "a filtering facepiece is its own filter: enter it under filters as well"
+        }
 
     def __init__(self, *args: Any, pack: RulePack, **kwargs: Any) -> None:
         super().__init__(*args, **kwargs)
