@@ -11,7 +11,7 @@ from programme.roster.permissions import ACTS, may
 NAV = (
     ("Today", "selection:today"),
     ("Tasks", "selection:tasks"),
-    ("People", "roster:people"),
+    ("People", "selection:people"),
     ("Samples", "exposure:samples"),
     ("Fit tests", "fit:tests"),
     ("Respirators", "equipment:respirators"),

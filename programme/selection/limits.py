@@ -1,0 +1,126 @@
+"""Which limit binds an agent in a task: every limit tried, the binding one named, in one unit."""
+
+import math
+from dataclasses import dataclass
+
+from exposure.models import ExposureLimit
+from exposure.units import convert, site_molar_volume_l_mol
+from programme.figures import near, unit_sign
+from programme.selection.facts import AgentFact, TaskFacts
+
+# A maximum peak above a ceiling is an allowance, not a second ceiling: it never drives a choice.
+PEAK = "peak"
+# A ppm limit is printed for 25 °C and 101.325 kPa in its mg/m3 twin.
+LIST_MOLAR_VOLUME = {"US": 24.45, "GB": 24.06, "EU": 24.06}
+# A total sample below a limit for a finer fraction shows compliance; the converse is not allowed.
+ANSWERS = {
+    "total": ("total", "inhalable", "thoracic", "respirable"),
+    "inhalable": ("inhalable", "thoracic", "respirable"),
+    "thoracic": ("thoracic", "respirable"),
+    "respirable": ("respirable",),
+    "vapour": ("vapour",),
+}
+KIND_SAYS = {"TWA": "8-hour average", "STEL": "short-term average", "C": "ceiling"}
+
+
+@dataclass(frozen=True, slots=True)
+class Binding:
+    """The limit that binds one averaging kind, as it is compared: value and unit after adjustment."""
+
+    kind: str
+    limit: ExposureLimit
+    value: float
+    unit: str
+    adjusted_by: str = ""
+    adjusted_source: str = ""
+    adjusted_sure: str = ""
+    tried: tuple[ExposureLimit, ...] = ()
+
+    @property
+    def says(self) -> str:
+        return f"{near(self.value)} {unit_sign(self.unit)}"
+
+
+def sample_unit(fact: AgentFact) -> str:
+    """The unit in which the group is judged: that of its newest result, else of its kind."""
+    if fact.samples:
+        return fact.samples[-1].unit
+    return "ppm" if fact.form == "gas" else "mg/m3"
+
+
+def in_unit(
+    value: float, unit: str, fact: AgentFact, *, target: str, volume: float
+) -> float:
+    """`value` in the target unit; NaN where it cannot be converted (a dust has no ppm)."""
+    try:
+        return convert(
+            value, fact.agent, source=unit, target=target, molar_volume=volume
+        )
+    except ValueError:
+        return math.nan
+
+
+def _compared(
+    row: ExposureLimit, fact: AgentFact, facts: TaskFacts, unit: str
+) -> float:
+    # ppm is conserved under temperature and pressure, mg/m3 is not: a mass limit of a vapour goes
+    # to ppm at its list's reference state first, then to the site's air.
+    if row.unit == unit:
+        if unit == "mg/m3" and row.fraction == "vapour" and fact.agent.molar_mass_g_mol:
+            volume = LIST_MOLAR_VOLUME.get(row.list_code[:2], 24.45)
+            ppm = in_unit(row.value, unit, fact, target="ppm", volume=volume)
+            site = site_molar_volume_l_mol(facts.site)
+            return in_unit(ppm, "ppm", fact, target=unit, volume=site)
+        return row.value
+    if unit == "ppm":
+        volume = LIST_MOLAR_VOLUME.get(row.list_code[:2], 24.45)
+    else:
+        volume = site_molar_volume_l_mol(facts.site)
+    return in_unit(row.value, row.unit, fact, target=unit, volume=volume)
+
+
+def _adjusted(facts: TaskFacts, fact: AgentFact, binding: Binding) -> Binding:
+    substance = facts.pack.substance(fact.agent.cas)
+    rule = substance.extended_shift if substance else None
+    own = (
+        rule.limit_ug_m3(facts.task.shift_h) if rule and binding.kind == "TWA" else None
+    )
+    if (
+        rule is None
+        or own is None
+        or binding.unit != "mg/m3"
+        or own / 1000 >= binding.value
+    ):
+        return binding
+    says = f"{rule.numerator_ug_m3_h:g} µg·h/m³ ÷ {facts.task.shift_h:g} h"
+    return Binding(
+        binding.kind,
+        binding.limit,
+        own / 1000,
+        binding.unit,
+        says,
+        rule.source,
+        rule.sure,
+        binding.tried,
+    )
+
+
+def bindings(facts: TaskFacts, fact: AgentFact) -> dict[str, Binding]:
+    """The binding limit of each averaging kind there is one for: "TWA", "STEL", "C"."""
+    unit = sample_unit(fact)
+    by_kind: dict[str, list[tuple[float, ExposureLimit]]] = {}
+    for row in fact.limits:
+        if PEAK in row.note.lower() or row.fraction not in ANSWERS[fact.fraction]:
+            continue
+        value = _compared(row, fact, facts, unit)
+        # Not `> 0`: a limit that cannot be converted (NaN) does not take part.
+        if value > 0:
+            by_kind.setdefault(row.kind, []).append((value, row))
+    found = {}
+    for kind, rows in by_kind.items():
+        exact = [one for one in rows if one[1].fraction == fact.fraction] or rows
+        value, row = min(exact, key=lambda one: one[0])
+        tried = tuple(one[1] for one in sorted(rows, key=lambda one: one[0]))
+        binding = Binding(kind, row, value, unit, tried=tried)
+        found[kind] = _adjusted(facts, fact, binding)
+    return found
