@@ -1,6 +1,6 @@
 """Agents, their limits, the tasks in which they are met, and what was measured there."""
 
-from datetime import date
+from datetime import date, time
 
 from django.core.validators import MaxValueValidator, MinValueValidator
 from django.db import models
@@ -220,7 +220,7 @@ class Task(models.Model):
         validators=[MinValueValidator(0.1), MaxValueValidator(21)],
         help_text="shifts a week in which one worker does the task, 0.1 to 21",
     )
-    starts_at = models.TimeField("Shift starts", default="06:00")
+    starts_at = models.TimeField("Shift starts", default=time(6, 0))
     temperature_c = models.FloatField(
         null=True,
         blank=True,
