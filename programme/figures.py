@@ -27,14 +27,13 @@ def rounded(value: float | None, *, toward: str = "near", digits: int = 3) -> st
         ValueError: `toward` is none of the three.
     """
     if toward not in _ROUNDINGS:
-        raise ValueError(
-            f"toward: {toward!r} is not allowed; it may be up, down or near"
-        )
+        raise ValueError(f"toward: {toward!r} is not allowed; it may be up, down or near")
     if value is None or not math.isfinite(value):
         return NOT_KNOWN
     if value == 0:
         return "0"
-    exact = Decimal(repr(float(value)))
+    # Twelve digits first: 799.9999999999999 is 800 after a sum of reciprocals, not 799.
+    exact = Decimal(f"{float(value):.12g}")
     step = Decimal(1).scaleb(exact.adjusted() - digits + 1)
     # A whole number keeps all its digits: 10 000 must not read as 1e4 rounded.
     if exact == exact.to_integral_value() and abs(exact) < 1_000_000:

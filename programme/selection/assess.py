@@ -41,9 +41,7 @@ def _chain(
     ]
     made = filter_link.schedule(facts, agents)
     task_breaks = any(one.is_broken for one in first_four) or any(
-        m.severity != "plan"
-        for one in made.by_assembly.values()
-        for m in one.mismatches
+        m.severity != "plan" for one in made.by_assembly.values() for m in one.mismatches
     )
     members = tuple(made.of(member) for member in facts.crew)
     crew = tuple(
@@ -90,9 +88,7 @@ def verdicts_of(worker: Worker, *, on: date) -> list[tuple[Chain, CrewVerdict]]:
     """The chains of the tasks this worker is on that day, each with the worker's own verdict."""
     rows = CrewMember.objects.at(worker.site).active(on).filter(worker=worker)
     tasks = list(
-        Task.objects.at(worker.site)
-        .active(on)
-        .filter(pk__in=[row.task_id for row in rows])
+        Task.objects.at(worker.site).active(on).filter(pk__in=[row.task_id for row in rows])
     )
     found = []
     for chain in assess_site(worker.site, on=on, tasks=tasks):

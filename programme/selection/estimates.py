@@ -58,6 +58,7 @@ class AgentEstimates:
     estimates: dict[str, Estimate]
     left_out: Counter[str]
     unit: str
+    values: dict[str, list[tuple[float, bool]]]
 
     @cached_property
     def governing(self) -> Estimate | None:
@@ -106,10 +107,11 @@ def estimates(tasks: list[TaskFacts]) -> dict[int, AgentEstimates]:
             limits = bindings(facts, fact)
             unit = next((one.unit for one in limits.values()), "mg/m3")
             usable, left_out = _usable(facts, fact, unit)
-            one = AgentEstimates(fact, limits, {}, left_out, unit)
+            one = AgentEstimates(fact, limits, {}, left_out, unit, {})
             found[fact.id] = one
             for kind in limits:
                 rows = [row for row in usable if row[0].span in SPANS[kind]]
+                one.values[kind] = [(value, sample.is_censored) for sample, value, _ in rows]
                 for sample, value, lod in rows:
                     values.append(value)
                     censored.append(sample.is_censored)

@@ -171,19 +171,16 @@ def _fit_tests(workers: Q, on: date) -> dict[int, list[FitFact]]:
         all_n,
         low,
     ) in rows:
-        # Harmonic mean: only where every counted exercise has its figure.
-        overall = n / pen if pen and n and n == all_n else None
+        # Harmonic mean: only where every counted exercise has its figure. Twelve digits, so that
+        # a sum of reciprocals does not bring a test of exactly the pass level under it.
+        overall = float(f"{n / pen:.12g}") if pen and n and n == all_n else None
         found[worker].append(
-            FitFact(
-                pk, size_id, facepiece, size, day, protocol, outcome, overall, low, n
-            )
+            FitFact(pk, size_id, facepiece, size, day, protocol, outcome, overall, low, n)
         )
     return found
 
 
-def _worker_facts(
-    members: list[CrewMember], workers: Q, on: date
-) -> dict[int, WorkerFact]:
+def _worker_facts(members: list[CrewMember], workers: Q, on: date) -> dict[int, WorkerFact]:
     clearances = _newest(
         Clearance.objects.in_force()
         .filter(workers, decided_on__lte=on)
@@ -195,9 +192,7 @@ def _worker_facts(
         .order_by("-trained_on", "-pk")
     )
     notes = (
-        SealNote.objects.in_force()
-        .filter(workers, noted_on__lte=on)
-        .order_by("-noted_on", "-pk")
+        SealNote.objects.in_force().filter(workers, noted_on__lte=on).order_by("-noted_on", "-pk")
     )
     hair: dict[int, SealNote] = {}
     changed: dict[int, date] = {}
@@ -209,9 +204,7 @@ def _worker_facts(
     tests = _fit_tests(workers, on)
     filters: dict[int, dict[int, FilterChange]] = defaultdict(dict)
     last_moment = on + timedelta(days=1)
-    changes = FilterChange.objects.in_force().filter(
-        workers, fitted_at__date__lt=last_moment
-    )
+    changes = FilterChange.objects.in_force().filter(workers, fitted_at__date__lt=last_moment)
     for change in changes.order_by("-fitted_at", "-pk"):
         filters[change.worker_id].setdefault(change.assembly_id, change)
     found = {}
@@ -233,9 +226,7 @@ def _worker_facts(
     return found
 
 
-def _agent_facts(
-    site: Site, pack: RulePack, tasks: list[Task], on: date
-) -> dict[int, list]:
+def _agent_facts(site: Site, pack: RulePack, tasks: list[Task], on: date) -> dict[int, list]:
     rows = list(TaskAgent.objects.filter(task__in=tasks).select_related("agent"))
     lists = [*pack.limit_lists, *site.adopted_limit_lists, "SITE"]
     limits: dict[int, list[ExposureLimit]] = defaultdict(list)
@@ -307,17 +298,10 @@ def gather(site: Site, *, on: date, tasks: list[Task] | None = None) -> list[Tas
         .select_related("worker", "size")
         .order_by("task_id", "worker__name")
     )
-    every = {
-        one.pk: one
-        for one in (*shelf, *(a for rows in assigned.values() for a in rows))
-    }
-    missing = {
-        m.assembly_id for m in members if m.assembly_id and m.assembly_id not in every
-    }
+    every = {one.pk: one for one in (*shelf, *(a for rows in assigned.values() for a in rows))}
+    missing = {m.assembly_id for m in members if m.assembly_id and m.assembly_id not in every}
     if missing:
-        rows = Assembly.objects.filter(pk__in=missing).select_related(
-            "facepiece", "element"
-        )
+        rows = Assembly.objects.filter(pk__in=missing).select_related("facepiece", "element")
         every.update({row.pk: row for row in rows})
     if whole_site:
         workers = Q(worker__site=site)
@@ -337,8 +321,7 @@ def gather(site: Site, *, on: date, tasks: list[Task] | None = None) -> list[Tas
             )
         )
     tested = {
-        pk: frozenset(test.facepiece_id for test in one.fit_tests)
-        for pk, one in people.items()
+        pk: frozenset(test.facepiece_id for test in one.fit_tests) for pk, one in people.items()
     }
     return [
         TaskFacts(

@@ -48,21 +48,15 @@ def sample_unit(fact: AgentFact) -> str:
     return "ppm" if fact.form == "gas" else "mg/m3"
 
 
-def in_unit(
-    value: float, unit: str, fact: AgentFact, *, target: str, volume: float
-) -> float:
+def in_unit(value: float, unit: str, fact: AgentFact, *, target: str, volume: float) -> float:
     """`value` in the target unit; NaN where it cannot be converted (a dust has no ppm)."""
     try:
-        return convert(
-            value, fact.agent, source=unit, target=target, molar_volume=volume
-        )
+        return convert(value, fact.agent, source=unit, target=target, molar_volume=volume)
     except ValueError:
         return math.nan
 
 
-def _compared(
-    row: ExposureLimit, fact: AgentFact, facts: TaskFacts, unit: str
-) -> float:
+def _compared(row: ExposureLimit, fact: AgentFact, facts: TaskFacts, unit: str) -> float:
     # ppm is conserved under temperature and pressure, mg/m3 is not: a mass limit of a vapour goes
     # to ppm at its list's reference state first, then to the site's air.
     if row.unit == unit:
@@ -82,15 +76,8 @@ def _compared(
 def _adjusted(facts: TaskFacts, fact: AgentFact, binding: Binding) -> Binding:
     substance = facts.pack.substance(fact.agent.cas)
     rule = substance.extended_shift if substance else None
-    own = (
-        rule.limit_ug_m3(facts.task.shift_h) if rule and binding.kind == "TWA" else None
-    )
-    if (
-        rule is None
-        or own is None
-        or binding.unit != "mg/m3"
-        or own / 1000 >= binding.value
-    ):
+    own = rule.limit_ug_m3(facts.task.shift_h) if rule and binding.kind == "TWA" else None
+    if rule is None or own is None or binding.unit != "mg/m3" or own / 1000 >= binding.value:
         return binding
     says = f"{rule.numerator_ug_m3_h:g} µg·h/m³ ÷ {facts.task.shift_h:g} h"
     return Binding(

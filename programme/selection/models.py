@@ -21,9 +21,7 @@ class TaskAssembly(models.Model):
     """An assembly assigned to a task over a time; ended with a reason, never deleted."""
 
     task = models.ForeignKey(Task, on_delete=models.PROTECT, related_name="assemblies")
-    assembly = models.ForeignKey(
-        Assembly, on_delete=models.PROTECT, related_name="assignments"
-    )
+    assembly = models.ForeignKey(Assembly, on_delete=models.PROTECT, related_name="assignments")
     active_from = models.DateField()
     active_to = models.DateField(null=True, blank=True)
     recorded_by = models.CharField(max_length=150, blank=True)

@@ -133,13 +133,9 @@ def papers_of(worker: Worker, *, on: date) -> Papers:
         list(worker.clearances.filter(decided_on__lte=on)),
         [(row, _covers(row)) for row in worker.trainings.filter(trained_on__lte=on)],
         list(worker.seal_notes.filter(noted_on__lte=on)),
+        list(worker.fit_tests.filter(tested_on__lte=on).select_related("size__facepiece")),
         list(
-            worker.fit_tests.filter(tested_on__lte=on).select_related("size__facepiece")
-        ),
-        list(
-            worker.filter_changes.in_force()
-            .select_related("assembly")
-            .order_by("-fitted_at")[:20]
+            worker.filter_changes.in_force().select_related("assembly").order_by("-fitted_at")[:20]
         ),
     )
 

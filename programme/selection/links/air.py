@@ -50,13 +50,8 @@ def working(one: AgentEstimates, estimate: Estimate, facts: TaskFacts) -> Workin
         Row("How", BASIS_SAYS.get(estimate.basis, estimate.basis)),
         Row("Statistic (site setting)", STATISTIC_SAYS[policy]),
     ]
-    rows += [
-        Row("Note", SENTENCES[flag]) for flag in estimate.flags if flag in SENTENCES
-    ]
-    rows += [
-        Row("Left out", f"{count} {reason}")
-        for reason, count in sorted(one.left_out.items())
-    ]
+    rows += [Row("Note", SENTENCES[flag]) for flag in estimate.flags if flag in SENTENCES]
+    rows += [Row("Left out", f"{count} {reason}") for reason, count in sorted(one.left_out.items())]
     return Working(
         title=f"{one.fact.agent.name}, {KIND_SAYS[estimate.kind]}: "
         f"{_figure(estimate.governing, unit)}",
@@ -84,23 +79,15 @@ def working(one: AgentEstimates, estimate: Estimate, facts: TaskFacts) -> Workin
 
 def _of_agent(one: AgentEstimates, facts: TaskFacts, find: Finder) -> list[Mismatch]:
     name = one.fact.agent.name
-    add = Remedy(
-        "Record a sample", "exposure:sample_add", (), f"?task_agent={one.fact.id}"
-    )
+    add = Remedy("Record a sample", "exposure:sample_add", (), f"?task_agent={one.fact.id}")
     sheet = Remedy("Import a laboratory sheet", "records:import_start", ("samples",))
-    left = ", ".join(
-        f"{count} {reason}" for reason, count in sorted(one.left_out.items())
-    )
+    left = ", ".join(f"{count} {reason}" for reason, count in sorted(one.left_out.items()))
     usable = sum(e.n for e in one.estimates.values())
     if not one.bindings:
         # Without a limit nothing can be estimated against it; the Limit link says what is missing.
         if one.fact.samples:
             return []
-        return [
-            find.stop(
-                "exposure-unknown", f"{name}: not assessed, no air sample.", add, sheet
-            )
-        ]
+        return [find.stop("exposure-unknown", f"{name}: not assessed, no air sample.", add, sheet)]
     if usable == 0:
         also = f" Left out: {left}." if left else ""
         if any("before the change" in reason for reason in one.left_out):

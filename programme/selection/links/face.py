@@ -47,9 +47,7 @@ class _Wearer:
         self.until: list[Until] = []
         self.fit: FitFact | None = None
 
-    def say(
-        self, code: str, says: str, *remedies: Remedy, severity: str = "stop", **more
-    ) -> None:
+    def say(self, code: str, says: str, *remedies: Remedy, severity: str = "stop", **more) -> None:
         make = self.find.stop if severity == "stop" else self.find.fix
         line = f"{self.worker.name}: {says}"
         one = make(
@@ -132,10 +130,7 @@ class _Wearer:
             one.heaviest_work
         ):
             return f"work up to {one.get_heaviest_work_display()}"
-        if (
-            one.max_hours_a_shift is not None
-            and not task.wear_h_per_shift <= one.max_hours_a_shift
-        ):
+        if one.max_hours_a_shift is not None and not task.wear_h_per_shift <= one.max_hours_a_shift:
             return f"up to {near(one.max_hours_a_shift)} h a shift"
         return ""
 
@@ -163,9 +158,7 @@ class _Wearer:
     def seal(self) -> None:
         note = self.worker.hair_note
         if note is not None and note.kind == SealNote.Kind.FACIAL_HAIR:
-            shave = Remedy(
-                "Note a clear face", "roster:seal_note_add", (self.worker.id,)
-            )
+            shave = Remedy("Note a clear face", "roster:seal_note_add", (self.worker.id,))
             loose = Remedy(
                 "Offer a loose-fitting respirator",
                 "selection:crew",
@@ -176,13 +169,8 @@ class _Wearer:
 
     def fit_test(self, assembly: Assembly) -> None:
         """A passed test, in date, on this facepiece and size, high enough for it."""
-        book = Remedy(
-            "Record a fit test", "fit:test_add", (), f"?worker={self.worker.id}"
-        )
-        if (
-            self.member.size_id is None
-            or self.member.size_facepiece_id != assembly.facepiece_id
-        ):
+        book = Remedy("Record a fit test", "fit:test_add", (), f"?worker={self.worker.id}")
+        if self.member.size_id is None or self.member.size_facepiece_id != assembly.facepiece_id:
             crew = Remedy("Choose the size", "selection:crew", (self.facts.task.pk,))
             self.say(
                 "size-missing",
@@ -215,9 +203,7 @@ class _Wearer:
             self.say("fit-missing", f"no fit test on {assembly.facepiece.name}.", book)
             return
         sizes = ", ".join(sorted({test.size for test in passed}))
-        swap = Remedy(
-            f"Assign size {passed[0].size}", "selection:crew", (self.facts.task.pk,)
-        )
+        swap = Remedy(f"Assign size {passed[0].size}", "selection:crew", (self.facts.task.pk,))
         says = f"fit test passed on size {sizes}, size {self.member.size} assigned."
         self.say("fit-size", says, swap, book)
 
@@ -225,9 +211,7 @@ class _Wearer:
         protocol = self.pack.find_protocol(test.protocol)
         if test.outcome != "passed" or protocol is None:
             code = "fit-incomplete" if test.outcome == "incomplete" else "fit-low"
-            says = (
-                f"the last fit test, {test.tested_on}, was not passed ({test.outcome})."
-            )
+            says = f"the last fit test, {test.tested_on}, was not passed ({test.outcome})."
             if protocol is None:
                 code, says = (
                     "fit-protocol",
@@ -241,9 +225,7 @@ class _Wearer:
             self.say("fit-expired", f"fit test ran out on {expires}.", book)
         self._level(test, assembly, protocol.method, book)
 
-    def _level(
-        self, test: FitFact, assembly: Assembly, method: str, book: Remedy
-    ) -> None:
+    def _level(self, test: FitFact, assembly: Assembly, method: str, book: Remedy) -> None:
         level = self.pack.pass_level(assembly.facepiece.kind, method)
         if level is None or not level.allowed:
             says = f"a {method} test does not count on a {assembly.facepiece.get_kind_display()}."
@@ -257,16 +239,12 @@ class _Wearer:
                 self.say("fit-low", says, book, source=level.source, sure=level.sure)
             elif level.each_exercise_must_pass and not (lowest or 0) >= least:
                 says = f"one exercise gave {down(lowest)}, under {down(least)}."
-                self.say(
-                    "fit-exercise-low", says, book, source=level.source, sure=level.sure
-                )
+                self.say("fit-exercise-low", says, book, source=level.source, sure=level.sure)
         of_class = self._of_class(assembly)
         cap = level.cap_for(of_class) if of_class else None
         if cap is not None and self.asked.ratio > cap:
             says = f"a {method} test supports APF {down(cap)} at most here."
-            self.say(
-                "apf-cap-fit-method", says, book, source=level.source, sure=level.sure
-            )
+            self.say("apf-cap-fit-method", says, book, source=level.source, sure=level.sure)
 
 
 def verdict(
@@ -309,28 +287,18 @@ def judge(facts: TaskFacts, crew: tuple[CrewVerdict, ...]) -> Link:
         remedy = Remedy("Put workers on the task", "selection:crew", (facts.task.pk,))
         says = "Nobody is on this task."
         missing = find.stop("crew-empty", says, remedy, clause="programme")
-        return Link(
-            "Face", state_of((missing,)), "nobody", "no crew recorded", (missing,)
-        )
+        return Link("Face", state_of((missing,)), "nobody", "no crew recorded", (missing,))
     found = tuple(m for one in crew for m in one.mismatches if m.link == "Face")
     may = sum(
         1
         for one in crew
         if not any(m.link == "Face" and m.severity != PLAN for m in one.mismatches)
     )
-    days = [
-        one.good_until for one in crew if one.good_until and one.good_until > facts.on
-    ]
+    days = [one.good_until for one in crew if one.good_until and one.good_until > facts.on]
     first = min(days, default=None)
-    soon = first is not None and first - facts.on <= timedelta(
-        days=facts.site.due_soon_days
-    )
+    soon = first is not None and first - facts.on <= timedelta(days=facts.site.due_soon_days)
     state = state_of(found, is_due_soon=soon)
-    basis = (
-        f"next to lapse {first}"
-        if first and state == DUE_SOON
-        else "cleared, trained, fitted"
-    )
+    basis = f"next to lapse {first}" if first and state == DUE_SOON else "cleared, trained, fitted"
     if may < len(crew):
         basis = f"{len(crew) - may} may not wear it"
     working = _working(facts)
@@ -354,14 +322,10 @@ def _working(facts: TaskFacts) -> Working:
         if own:
             text += f"; the site's own: {own} months"
         rows.append(Row(f"{kind.capitalize()} interval", text, law.source, law.sure))
-    for kind in sorted(
-        {a.facepiece.kind for a in facts.assigned if a.facepiece.is_tight}
-    ):
+    for kind in sorted({a.facepiece.kind for a in facts.assigned if a.facepiece.is_tight}):
         level = pack.pass_level(kind, "quantitative")
         if level is not None and level.min_fit_factor is not None:
-            each = (
-                ", in every exercise" if level.each_exercise_must_pass else ", overall"
-            )
+            each = ", in every exercise" if level.each_exercise_must_pass else ", overall"
             rows.append(
                 Row(
                     f"Pass level, {kind.replace('_', ' ')}",

@@ -83,9 +83,7 @@ class Schedule:
         return _dated(self.facts, member, one, one.whole_shifts)
 
 
-def _dated(
-    facts: TaskFacts, member: CrewFact, one: ElementSchedule, interval: int
-) -> MemberFilter:
+def _dated(facts: TaskFacts, member: CrewFact, one: ElementSchedule, interval: int) -> MemberFilter:
     find = Finder(facts.pack, "Filter")
     name, pk = member.worker.name, member.worker.id
     query = f"?worker={pk}&assembly={one.assembly.pk}"
@@ -99,9 +97,7 @@ def _dated(
     a_day = facts.task.shifts_per_week / DAYS_A_WEEK
     if last.shifts_used is not None:
         counted_on = facts.on
-        due = counted_on + timedelta(
-            days=math.floor((interval - last.shifts_used) / a_day)
-        )
+        due = counted_on + timedelta(days=math.floor((interval - last.shifts_used) / a_day))
     else:
         due = fitted + timedelta(days=math.floor(interval / a_day))
     # Not `<`: the due day is the first on which the filter no longer counts.
@@ -140,9 +136,7 @@ def _flow_l_min(facts: TaskFacts, assembly: Assembly) -> tuple[float, str]:
 class _Candidates:
     """Collects every reason to change the element of one assembly."""
 
-    def __init__(
-        self, facts: TaskFacts, agents: list[AgentEstimates], assembly: Assembly
-    ) -> None:
+    def __init__(self, facts: TaskFacts, agents: list[AgentEstimates], assembly: Assembly) -> None:
         self.facts, self.agents, self.assembly = facts, agents, assembly
         self.pack, self.element = facts.pack, assembly.element
         self.find = Finder(facts.pack, "Filter")
@@ -150,9 +144,7 @@ class _Candidates:
         self.rows: list[Row] = []
         self.found: list[Mismatch] = []
         self.edit = Remedy("Open the assembly", "equipment:assembly", (assembly.pk,))
-        self.task_edit = Remedy(
-            "Open the task's agents", "exposure:task_edit", (facts.task.pk,)
-        )
+        self.task_edit = Remedy("Open the task's agents", "exposure:task_edit", (facts.task.pk,))
 
     def add(
         self, reason: str, hours: float, working: str, source: str = "", sure: str = ""
@@ -168,9 +160,7 @@ class _Candidates:
             return
         dust, whence = _dust_mg_m3(self.agents)
         flow, flow_whence = _flow_l_min(facts, self.assembly)
-        self.rows.append(
-            Row("Air drawn through", f"{near(flow)} L/min ({flow_whence})")
-        )
+        self.rows.append(Row("Air drawn through", f"{near(flow)} L/min ({flow_whence})"))
         if dust == dust:
             self.rows.append(Row("Dust load", f"{up(dust)} mg/m³ ({whence})"))
             mass = loading.mass_collected_kg(
@@ -179,17 +169,13 @@ class _Candidates:
                 duration_s=facts.task.wear_h_per_shift * 3600,
                 efficiency=1.0,
             )
-            self.rows.append(
-                Row("Mass collected a shift", f"{up(float(mass) * 1e6)} mg")
-            )
+            self.rows.append(Row("Mass collected a shift", f"{up(float(mass) * 1e6)} mg"))
             self._resistance(dust, flow)
             self._mass(dust, flow)
         else:
             says = f"{self.assembly.name}: how much dust loads the filter is not known ({whence})."
             self.found.append(
-                self.find.plan(
-                    "dust-load-unknown", says, self.task_edit, clause="filter-loading"
-                )
+                self.find.plan("dust-load-unknown", says, self.task_edit, clause="filter-loading")
             )
         self._certified()
         if element.maker_max_h:
@@ -232,17 +218,11 @@ class _Candidates:
             return
         mass_mg = limit.loading_mg * (2 if self.element.is_pair else 1)
         hours = mass_mg / (dust * flow * 60 / 1000)
-        self.add(
-            "mass", hours, f"{near(mass_mg)} mg collected", limit.source, limit.sure
-        )
+        self.add("mass", hours, f"{near(mass_mg)} mg collected", limit.source, limit.sure)
 
     def _use_limit(self):
         element = self.element
-        known = (
-            self.pack.find_particulate_filter(element.particulate_class)
-            if element
-            else None
-        )
+        known = self.pack.find_particulate_filter(element.particulate_class) if element else None
         if known is None:
             return None
         oily = self.facts.task.has_oil_aerosol or any(
@@ -256,13 +236,9 @@ class _Candidates:
             return
         task = self.facts.task
         if limit.hours is not None:
-            self.add(
-                "certification rule", limit.hours, limit.rule, limit.source, limit.sure
-            )
+            self.add("certification rule", limit.hours, limit.rule, limit.source, limit.sure)
         if limit.days is not None:
-            used = (
-                limit.days / DAYS_A_WEEK * task.shifts_per_week * task.wear_h_per_shift
-            )
+            used = limit.days / DAYS_A_WEEK * task.shifts_per_week * task.wear_h_per_shift
             self.add(
                 "certification rule, calendar",
                 used,
@@ -298,9 +274,7 @@ class _Candidates:
                     known.sure,
                 )
         if element.has_esli:
-            self.rows.append(
-                Row("End-of-service-life indicator", "changes when it shows")
-            )
+            self.rows.append(Row("End-of-service-life indicator", "changes when it shows"))
         if not based:
             names = ", ".join(one.fact.agent.name for one in gases)
             says = (
@@ -311,9 +285,7 @@ class _Candidates:
         if facts.site.cartridge_max_shifts:
             n = facts.site.cartridge_max_shifts
             hours = n * facts.task.wear_h_per_shift
-            self.add(
-                "site policy, cartridges", hours, f"{n} shift(s): vapours move at rest"
-            )
+            self.add("site policy, cartridges", hours, f"{n} shift(s): vapours move at rest")
 
     def _substance(self, one: AgentEstimates) -> bool:
         rule = self.pack.substance(one.fact.agent.cas)
@@ -358,17 +330,11 @@ def _element_schedule(
                 (assembly.pk,),
             )
             made.found.append(
-                made.find.stop(
-                    "schedule-missing", says, remedy, clause="filter-unknown"
-                )
+                made.find.stop("schedule-missing", says, remedy, clause="filter-unknown")
             )
-        return ElementSchedule(
-            assembly, None, (), None, tuple(made.rows), tuple(made.found)
-        )
+        return ElementSchedule(assembly, None, (), None, tuple(made.rows), tuple(made.found))
     found = shortest(made.limits)
-    whole = int(
-        shifts(min(found.hours, 1e6), hours_per_shift=facts.task.wear_h_per_shift + 0.0)
-    )
+    whole = int(shifts(min(found.hours, 1e6), hours_per_shift=facts.task.wear_h_per_shift + 0.0))
     return ElementSchedule(
         assembly,
         found.binding,
@@ -382,9 +348,7 @@ def _element_schedule(
 def schedule(facts: TaskFacts, agents: list[AgentEstimates]) -> Schedule:
     """Change schedules of the assigned assemblies that have an element."""
     with_element = [one for one in facts.assigned if one.element is not None]
-    return Schedule(
-        facts, {one.pk: _element_schedule(facts, agents, one) for one in with_element}
-    )
+    return Schedule(facts, {one.pk: _element_schedule(facts, agents, one) for one in with_element})
 
 
 def _working(facts: TaskFacts, one: ElementSchedule) -> Working:
@@ -431,9 +395,7 @@ def judge(facts: TaskFacts, made: Schedule, members: tuple[MemberFilter, ...]) -
         every, key=lambda one: one.whole_shifts if one.whole_shifts is not None else -1
     )
     figure = shortest_one.says
-    basis = (
-        shortest_one.binding.reason if shortest_one.binding else "cannot be estimated"
-    )
+    basis = shortest_one.binding.reason if shortest_one.binding else "cannot be estimated"
     if first and state == DUE_SOON:
         basis = f"next change by {first}"
     workings = tuple(_working(facts, one) for one in every)

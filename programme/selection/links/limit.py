@@ -68,13 +68,9 @@ def judge(facts: TaskFacts, agents: list[AgentEstimates]) -> Link:
     for one in agents:
         if not one.bindings:
             agent = one.fact.agent
-            lists = ", ".join(
-                (*facts.pack.limit_lists, *facts.site.adopted_limit_lists, "SITE")
-            )
+            lists = ", ".join((*facts.pack.limit_lists, *facts.site.adopted_limit_lists, "SITE"))
             says = f"{agent.name}: no limit for the {one.fact.fraction} fraction in {lists}."
-            remedy = Remedy(
-                "Add a limit of the site", "exposure:limit_add", (agent.pk,)
-            )
+            remedy = Remedy("Add a limit of the site", "exposure:limit_add", (agent.pk,))
             found.append(find.stop("limit-missing", says, remedy))
         workings += [_working(one, binding) for binding in one.bindings.values()]
         found += _long_shift(facts, one, find)
@@ -91,9 +87,7 @@ def _long_shift(facts: TaskFacts, one: AgentEstimates, find: Finder) -> list:
         f"{one.fact.agent.name}: the 8-hour limit is used unadjusted for a "
         f"{near(facts.task.shift_h)} h shift."
     )
-    remedy = Remedy(
-        "Add an adjusted limit of the site", "exposure:limit_add", (one.fact.agent.pk,)
-    )
+    remedy = Remedy("Add an adjusted limit of the site", "exposure:limit_add", (one.fact.agent.pk,))
     if twa.limit.list_code == "SITE":
         return []
     return [find.plan("shift-unadjusted", says, remedy, clause="limit-extended-shift")]
@@ -108,9 +102,5 @@ def _headline(agents: list[AgentEstimates]) -> tuple[str, str]:
         return one.governing.ratio if one.governing else -1.0
 
     worst = max(with_limit, key=ratio)
-    binding = (
-        worst.governing.binding
-        if worst.governing
-        else next(iter(worst.bindings.values()))
-    )
+    binding = worst.governing.binding if worst.governing else next(iter(worst.bindings.values()))
     return binding.says, f"{KIND_SAYS[binding.kind]}, {worst.fact.agent.name}"

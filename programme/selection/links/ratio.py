@@ -40,9 +40,7 @@ def _idlh(one: AgentEstimates, facts: TaskFacts) -> float:
     if agent.idlh_value is None or not agent.idlh_unit:
         return math.nan
     volume = site_molar_volume_l_mol(facts.site)
-    return in_unit(
-        agent.idlh_value, agent.idlh_unit, one.fact, target=one.unit, volume=volume
-    )
+    return in_unit(agent.idlh_value, agent.idlh_unit, one.fact, target=one.unit, volume=volume)
 
 
 def _worst(agents: list[AgentEstimates]) -> tuple[float, float]:
@@ -50,9 +48,7 @@ def _worst(agents: list[AgentEstimates]) -> tuple[float, float]:
     for one in agents:
         governing = one.governing
         ratios.append(governing.ratio if governing else math.nan)
-        ratios95.append(
-            max((e.ratio95 for e in one.estimates.values() if e.is_known), default=0)
-        )
+        ratios95.append(max((e.ratio95 for e in one.estimates.values() if e.is_known), default=0))
     if not ratios or any(math.isnan(value) for value in ratios):
         return math.nan, math.nan
     return max(ratios), max(ratios95)
@@ -81,9 +77,7 @@ def demand(facts: TaskFacts, agents: list[AgentEstimates]) -> Demand:
     return Demand(ratio, ratio95, required, bool(why), low, any_air, why)
 
 
-def _workings(
-    facts: TaskFacts, agents: list[AgentEstimates], asked: Demand
-) -> list[Working]:
+def _workings(facts: TaskFacts, agents: list[AgentEstimates], asked: Demand) -> list[Working]:
     made = []
     for one in agents:
         for estimate in one.estimates.values():
@@ -131,11 +125,7 @@ def _workings(
 
 def _oxygen(facts: TaskFacts, asked: Demand) -> Working:
     task, pack = facts.task, facts.pack
-    measured = (
-        f"{near(task.oxygen_percent)} %"
-        if task.oxygen == "measured"
-        else "not measured"
-    )
+    measured = f"{near(task.oxygen_percent)} %" if task.oxygen == "measured" else "not measured"
     rows = (
         Row("Air space", task.get_oxygen_display()),
         Row("Oxygen", measured),
@@ -158,9 +148,7 @@ def _oxygen(facts: TaskFacts, asked: Demand) -> Working:
     )
 
 
-def _found(
-    facts: TaskFacts, agents: list[AgentEstimates], asked: Demand
-) -> list[Mismatch]:
+def _found(facts: TaskFacts, agents: list[AgentEstimates], asked: Demand) -> list[Mismatch]:
     find = Finder(facts.pack, "Ratio")
     task = facts.task
     edit = Remedy("Enter the measured oxygen", "exposure:task_edit", (task.pk,))
@@ -184,9 +172,7 @@ def _found(
 def _unsampled_peaks(agents: list[AgentEstimates], find: Finder) -> list[Mismatch]:
     found = []
     for one in agents:
-        kinds = [
-            k for k in ("STEL", "C") if k in one.estimates and not one.estimates[k].n
-        ]
+        kinds = [k for k in ("STEL", "C") if k in one.estimates and not one.estimates[k].n]
         if kinds and one.governing is not None:
             limits = " and ".join(
                 f"{one.bindings[k].says} {'short term' if k == 'STEL' else 'ceiling'}"
@@ -211,12 +197,8 @@ def judge(facts: TaskFacts, agents: list[AgentEstimates], asked: Demand) -> Link
         figure = "immediately dangerous" if asked.why_idlh else ""
         return Link("Ratio", state_of(found), figure, asked.why_idlh, found, workings)
     if math.isnan(asked.ratio):
-        return Link(
-            "Ratio", state_of(found), "not known", "exposure or limit", found, workings
-        )
-    needs = (
-        f"needs APF {asked.required_apf}" if asked.required_apf else "above every class"
-    )
+        return Link("Ratio", state_of(found), "not known", "exposure or limit", found, workings)
+    needs = f"needs APF {asked.required_apf}" if asked.required_apf else "above every class"
     if asked.ratio <= 1:
         needs = f"not above the limit; smallest class APF {asked.required_apf}"
     return Link(

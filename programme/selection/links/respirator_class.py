@@ -40,9 +40,7 @@ class Wearable:
         return self.of_class is None or self.of_class.is_air_purifying
 
 
-def wearable(
-    assembly: Assembly, pack: RulePack, *, is_particulate_only: bool
-) -> Wearable:
+def wearable(assembly: Assembly, pack: RulePack, *, is_particulate_only: bool) -> Wearable:
     """The class of the assembly and its factor; NaN if the pack has no such class."""
     of_class = pack.find_class(assembly.respirator_class)
     if of_class is None:
@@ -73,30 +71,20 @@ class _Judge:
         self.pack, self.assembly = facts.pack, one.assembly
         self.find = Finder(facts.pack, "Class")
         self.found: list[Mismatch] = []
-        self.other = Remedy(
-            "Choose another assembly", "selection:assign", (facts.task.pk,)
-        )
-        self.edit = Remedy(
-            "Open the assembly", "equipment:assembly", (one.assembly.pk,)
-        )
+        self.other = Remedy("Choose another assembly", "selection:assign", (facts.task.pk,))
+        self.edit = Remedy("Open the assembly", "equipment:assembly", (one.assembly.pk,))
 
     def stop(self, code: str, says: str, *remedies: Remedy, **more) -> None:
         line = f"{self.assembly.name}: {says}"
-        self.found.append(
-            self.find.stop(code, line, *(remedies or (self.other,)), **more)
-        )
+        self.found.append(self.find.stop(code, line, *(remedies or (self.other,)), **more))
 
     def fix(self, code: str, says: str, *remedies: Remedy, **more) -> None:
         line = f"{self.assembly.name}: {says}"
-        self.found.append(
-            self.find.fix(code, line, *(remedies or (self.other,)), **more)
-        )
+        self.found.append(self.find.fix(code, line, *(remedies or (self.other,)), **more))
 
     def plan(self, code: str, says: str, *remedies: Remedy, **more) -> None:
         line = f"{self.assembly.name}: {says}"
-        self.found.append(
-            self.find.plan(code, line, *(remedies or (self.other,)), **more)
-        )
+        self.found.append(self.find.plan(code, line, *(remedies or (self.other,)), **more))
 
     def all(self) -> list[Mismatch]:
         self.whole()
@@ -123,11 +111,7 @@ class _Judge:
                 self.edit,
             )
         for part in (assembly, assembly.facepiece, assembly.element):
-            if (
-                part is not None
-                and part.withdrawn_on
-                and part.withdrawn_on <= self.facts.on
-            ):
+            if part is not None and part.withdrawn_on and part.withdrawn_on <= self.facts.on:
                 self.stop(
                     "assembly-withdrawn",
                     f"{part.name} was withdrawn on {part.withdrawn_on}.",
@@ -136,9 +120,7 @@ class _Judge:
         if of_class is None:
             return
         if of_class.inlet != assembly.facepiece.kind:
-            says = (
-                f"{assembly.facepiece.name} is no {of_class.inlet.replace('_', ' ')}."
-            )
+            says = f"{assembly.facepiece.name} is no {of_class.inlet.replace('_', ' ')}."
             self.stop("class-facepiece", says, self.edit, clause="assembly-approval")
         element = assembly.element
         if of_class.is_air_purifying:
@@ -152,9 +134,7 @@ class _Judge:
                     clause="element-class",
                 )
             elif not of_class.takes_element(particulate, has_gas=has_gas):
-                says = (
-                    f"the factor of {of_class.name} does not hold with {element.name}."
-                )
+                says = f"the factor of {of_class.name} does not hold with {element.name}."
                 self.stop("element-class", says, self.edit)
 
     def danger(self, of_class: RespiratorClass) -> None:
@@ -235,24 +215,18 @@ class _Judge:
                 source=bar.source,
                 sure=bar.sure,
             )
-        if (
-            rule.particulate_rank
-            and of_class.is_air_purifying
-            and one.fact.form != "gas"
-        ):
+        if rule.particulate_rank and of_class.is_air_purifying and one.fact.form != "gas":
             element = self.assembly.element
             known = (
-                self.pack.find_particulate_filter(element.particulate_class)
-                if element
-                else None
+                self.pack.find_particulate_filter(element.particulate_class) if element else None
             )
             least = rule.particulate_rank
             if known is None or not known.rank >= least.rank_min:
                 have = element.particulate_class if element else ""
-                says = f"{name} asks for a filter of rank {least.rank_min}; this is {have or 'none'}."
-                self.stop(
-                    "particulate-rank", says, source=least.source, sure=least.sure
+                says = (
+                    f"{name} asks for a filter of rank {least.rank_min}; this is {have or 'none'}."
                 )
+                self.stop("particulate-rank", says, source=least.source, sure=least.sure)
 
     def element(self, one: AgentEstimates) -> None:
         """The element against the form of the agent, and its own ceiling."""
@@ -263,35 +237,25 @@ class _Judge:
 
     def particulate(self, one: AgentEstimates) -> None:
         element, name = self.assembly.element, one.fact.agent.name
-        known = (
-            self.pack.find_particulate_filter(element.particulate_class)
-            if element
-            else None
-        )
+        known = self.pack.find_particulate_filter(element.particulate_class) if element else None
         if known is None:
             self.stop("particulate-missing", f"no particulate filter against {name}.")
             return
         is_oily = self.facts.task.has_oil_aerosol or one.fact.agent.is_oil_aerosol
         if is_oily and known.oil == "no":
             says = f"{known.id} is not for oil aerosol, and there is oil in the air."
-            self.stop(
-                "oil", says, source=known.source, sure=known.oil_sure or known.sure
-            )
+            self.stop("oil", says, source=known.source, sure=known.oil_sure or known.sure)
 
     def gas(self, one: AgentEstimates) -> None:
         agent, element, pack = one.fact.agent, self.assembly.element, self.pack
-        text = (
-            agent.us_filter_need if pack.need_scheme == "us" else agent.en_filter_need
-        )
+        text = agent.us_filter_need if pack.need_scheme == "us" else agent.en_filter_need
         needs = pack.needs(text)
         have = tuple(element.gas_elements) if element else ()
         if not have:
             self.stop("gas-missing", f"no cartridge against {agent.name}.")
             return
         if not needs:
-            self.stop(
-                "gas-need-unknown", f"no filter need is recorded for {agent.name}."
-            )
+            self.stop("gas-need-unknown", f"no filter need is recorded for {agent.name}.")
         elif pack.supplied_air_need in needs and not self._made_for(agent.cas, have):
             self.stop(
                 "supplied-air-only",
@@ -301,11 +265,7 @@ class _Judge:
             says = f"{'+'.join(have)} does not cover {agent.name}, which needs {text}."
             self.stop("gas-type", says)
         bar = pack.not_for(agent.cas, have)
-        if (
-            bar
-            and pack.supplied_air_need not in needs
-            and not bar.allowed_with_schedule
-        ):
+        if bar and pack.supplied_air_need not in needs and not bar.allowed_with_schedule:
             self.stop(
                 "not-for-cartridge",
                 f"{agent.name}: {bar.reason}",
@@ -400,18 +360,14 @@ def judge(facts: TaskFacts, agents: list[AgentEstimates], asked: Demand) -> Link
     return Link("Class", state_of(found), figure, basis, found, workings)
 
 
-def choices(
-    facts: TaskFacts, agents: list[AgentEstimates], asked: Demand
-) -> tuple[Choice, ...]:
+def choices(facts: TaskFacts, agents: list[AgentEstimates], asked: Demand) -> tuple[Choice, ...]:
     """Every assembly on the site's shelf: whether it would answer, else the first reason why not."""
     only = is_particulate_only(agents)
     assigned = {one.pk for one in facts.assigned}
     found = []
     for assembly in facts.shelf:
         one = wearable(assembly, facts.pack, is_particulate_only=only)
-        against = [
-            m for m in _Judge(facts, agents, asked, one).all() if m.severity != "plan"
-        ]
+        against = [m for m in _Judge(facts, agents, asked, one).all() if m.severity != "plan"]
         unknown = math.isnan(asked.ratio) and not facts.task.is_idlh
         why = against[0].says.split(": ", 1)[-1] if against else ""
         if unknown and not against and not (one.of_class and one.of_class.idlh):

@@ -10,9 +10,7 @@ class Finder:
     def __init__(self, pack: RulePack, link: str) -> None:
         self._pack, self._link = pack, link
 
-    def _make(
-        self, severity: str, code: str, says: str, *remedies: Remedy, **more
-    ) -> Mismatch:
+    def _make(self, severity: str, code: str, says: str, *remedies: Remedy, **more) -> Mismatch:
         clause = self._pack.clause(more.pop("clause", code))
         return Mismatch(
             code=code,
