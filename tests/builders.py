@@ -1,4 +1,4 @@
-"""Invented people, places and things, as few words as possible: what a test does not name is filled in.
+"""Invented people, places and things: what a test does not name is filled in.
 
 Every builder takes further fields of its model as keywords. Days default to `SINCE` (long ago)
 for what lasts and to `DAY` for what happened; `DAY` is the day on which tests judge.

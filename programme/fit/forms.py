@@ -29,7 +29,6 @@ from programme.roster.models import Site, Worker, active_on
 from programme.rulepack.pack import RulePack
 from programme.rulepack.rows import Protocol
 
-
 ID = re.compile(r"[0-9]{1,18}")
 
 
@@ -220,7 +219,7 @@ class FitTestForm(AskingForm):
             return
         if day > self.today:
             self.add_error(
-                "tested_on", future_refused("Date of test", "tested_on", day, self.today)
+                "tested_on", future_refused("Date of test", "tested_on", day=day, today=self.today)
             )
         elif worker.born_on and day <= worker.born_on:
             self.add_error(

@@ -1,26 +1,14 @@
 """How long a fit test counts: months on the calendar, by the pack's interval or a shorter one."""
 
-import calendar
 from dataclasses import dataclass
 from datetime import date, timedelta
 
 from programme.fit.models import FitTest
 from programme.roster.models import Site
+from programme.roster.months import months_after, months_before
 from programme.rulepack.pack import RulePack
 
 FIT_TEST = "fit"
-
-
-def months_after(day: date, months: int) -> date:
-    """The same day of the month, `months` later; the last day where that month is shorter.
-
-    Args:
-        day: any day.
-        months: whole months; negative for earlier.
-    """
-    year, month = divmod(day.year * 12 + day.month - 1 + months, 12)
-    last = calendar.monthrange(year, month + 1)[1]
-    return date(year, month + 1, min(day.day, last))
 
 
 def shorter_months(pack_months: int | None, site_months: int | None) -> int | None:
@@ -36,7 +24,7 @@ def interval_months(pack: RulePack, site: Site) -> int | None:
 
 def last_lapsed_day(on: date, months: int) -> date:
     """The latest day of test whose test no longer counts on `on`."""
-    day = months_after(on, -months) + timedelta(days=4)
+    day = months_before(on, months) + timedelta(days=4)
     while months_after(day, months) > on:
         day -= timedelta(days=1)
     return day

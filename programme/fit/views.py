@@ -88,7 +88,11 @@ def _chosen(request: SiteRequest, data: Any) -> tuple[ChoiceForm, Chosen | None]
 
 
 def _entry_page(
-    request: SiteRequest, choice: ChoiceForm | None, form: FitTestForm | None, old: FitTest | None
+    request: SiteRequest,
+    choice: ChoiceForm,
+    *,
+    form: FitTestForm | None = None,
+    old: FitTest | None = None,
 ) -> HttpResponse:
     """The entry page as it stands; 422 where something was refused."""
     context: dict[str, Any] = {
@@ -97,7 +101,7 @@ def _entry_page(
         "old": old,
         "caution": NOT_A_PROTECTION_FACTOR,
     }
-    is_refused = bool(choice and choice.is_bound and choice.errors)
+    is_refused = choice.is_bound and bool(choice.errors)
     if form is not None:
         chosen = form.chosen
         kind = chosen.size.facepiece.kind
@@ -125,7 +129,7 @@ def test_add(request: SiteRequest) -> HttpResponse:
     has_choice = any(request.GET.get(name) for name in ("worker", "size"))
     choice, chosen = _chosen(request, request.GET if has_choice else None)
     if chosen is None:
-        return _entry_page(request, choice, None, None)
+        return _entry_page(request, choice)
     today = request.site.today()
     initial = {"tested_on": today, "tester": listing.usual_tester(request)}
     form = FitTestForm(request.POST or None, chosen=chosen, today=today, initial=initial)
@@ -137,7 +141,7 @@ def test_add(request: SiteRequest) -> HttpResponse:
         else:
             _tell(request, stored, form.draft.judged.says)
             return redirect(stored)
-    return _entry_page(request, choice, form, None)
+    return _entry_page(request, choice, form=form)
 
 
 @site_page("fit tests")
@@ -169,7 +173,7 @@ def test_correct(request: SiteRequest, pk: int) -> HttpResponse:
     asked |= {name: request.GET[name] for name in ("size", "protocol") if request.GET.get(name)}
     choice, chosen = _chosen(request, asked)
     if chosen is None:
-        return _entry_page(request, choice, None, old)
+        return _entry_page(request, choice, old=old)
     form = FitTestForm(
         request.POST or None,
         chosen=chosen,
@@ -186,7 +190,7 @@ def test_correct(request: SiteRequest, pk: int) -> HttpResponse:
         else:
             _tell(request, stored, form.draft.judged.says)
             return redirect(stored)
-    return _entry_page(request, choice, form, old)
+    return _entry_page(request, choice, form=form, old=old)
 
 
 @site_page("fit tests")

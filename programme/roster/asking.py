@@ -83,7 +83,7 @@ def same_day_past(day: date, today: date) -> date:
     return today
 
 
-def future_refused(label: str, name: str, day: date, today: date) -> SafeString:
+def future_refused(label: str, name: str, *, day: date, today: date) -> SafeString:
     """The refusal of a day that lies in the future, with the likeliest day meant."""
     message = f"{label}: {day} lies in the future; it may be up to {today}."
     return with_offer(message, name, same_day_past(day, today))
@@ -119,7 +119,7 @@ def text_asked(request: HttpRequest, name: str) -> str:
 def sort_asked(request: HttpRequest, allowed: Mapping[str, Any], default: str) -> str:
     """The sort key in `?sort=`, with "-" for downwards; `default` for any that is not allowed."""
     asked = request.GET.get("sort", "")
-    return asked if asked.lstrip("-") in allowed and asked.count("-") < 2 else default
+    return asked if asked.removeprefix("-") in allowed else default
 
 
 def record_asked(request: HttpRequest, name: str) -> int | None:

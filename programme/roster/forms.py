@@ -116,7 +116,7 @@ class PaperForm(AskingForm, forms.ModelForm):
             return found
         born = self.worker.born_on
         if day > self.today:
-            self.add_error(self.day, future_refused(label, self.day, day, self.today))
+            self.add_error(self.day, future_refused(label, self.day, day=day, today=self.today))
         elif born and day <= born:
             self.add_error(
                 self.day,

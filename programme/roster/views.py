@@ -136,7 +136,7 @@ def _paper_form(
     return kind.form(request.POST or None, initial=initial, **rest)
 
 
-def _old(request: SiteRequest, kind: PaperKind, worker: Worker, row: int) -> Any:
+def _old(request: SiteRequest, kind: PaperKind, *, worker: Worker, row: int) -> Any:
     rows = kind.model.objects.for_user(request.user)
     return get_object_or_404(rows.select_related("worker__site"), pk=row, worker=worker)
 
@@ -156,9 +156,9 @@ def paper_add(request: SiteRequest, pk: int, kind: str) -> HttpResponse:
 
 @site_page("see")
 @require_http_methods(["GET", "POST"])
-def paper_correct(request: SiteRequest, pk: int, kind: str, row: int) -> HttpResponse:
+def paper_correct(request: SiteRequest, pk: int, *, kind: str, row: int) -> HttpResponse:
     paper, worker = _kind(request, kind), worker_of(request, pk)
-    old = _old(request, paper, worker, row)
+    old = _old(request, paper, worker=worker, row=row)
     if not old.stands:
         messages.error(request, "This record was replaced or withdrawn; correct the newest one.")
         return redirect(worker)
@@ -178,9 +178,9 @@ def paper_correct(request: SiteRequest, pk: int, kind: str, row: int) -> HttpRes
 
 @site_page("see")
 @require_http_methods(["GET", "POST"])
-def paper_withdraw(request: SiteRequest, pk: int, kind: str, row: int) -> HttpResponse:
+def paper_withdraw(request: SiteRequest, pk: int, *, kind: str, row: int) -> HttpResponse:
     paper, worker = _kind(request, kind), worker_of(request, pk)
-    old = _old(request, paper, worker, row)
+    old = _old(request, paper, worker=worker, row=row)
     form = ReasonForm(request.POST or None, submit=f"Withdraw this {paper.noun}")
     if form.is_valid():
         try:

@@ -3,17 +3,19 @@
 from collections import defaultdict
 from collections.abc import Iterable
 from dataclasses import dataclass
-from datetime import date
+from datetime import date, timedelta
 from typing import Any
 
 from django.db.models import Q
+from django.urls import reverse
 
 from programme.equipment.models import FilterChange
 from programme.fit.models import FitTest
 from programme.ledger.models import Entry
 from programme.roster.models import Clearance, SealNote, Site, Training, Worker
 from programme.selection.assess import assess_site
-from programme.selection.chain import Chain, CrewVerdict, Mismatch
+from programme.selection.chain import PLAN, Chain, CrewVerdict, Mismatch
+from programme.selection.links.face import MEDICAL
 
 STATES = {
     "here": "works here",
@@ -39,7 +41,7 @@ class PersonRow:
     worker: Worker
     may: int = 0
     of: int = 0
-    good_until: date | None = None
+    lapses_on: date | None = None
 
     @property
     def ready(self) -> str:
@@ -72,43 +74,73 @@ def people_rows(workers: Iterable[Worker], *, site: Site, on: date) -> list[Pers
             row.of += 1
             row.may += one.may_start
             if one.may_start and one.good_until is not None:
-                row.good_until = min(row.good_until or one.good_until, one.good_until)
+                row.lapses_on = min(row.lapses_on or one.good_until, one.good_until)
     return list(rows.values())
 
 
 @dataclass(frozen=True)
+class Reason:
+    """One thing against a start, and the pages that mend it: (what to do, address)."""
+
+    says: str
+    mends: tuple[tuple[str, str], ...] = ()
+
+
+@dataclass(frozen=True)
 class Saying:
-    """One task of one person as the page prints it."""
+    """One task of one person as the page prints it.
+
+    Attributes:
+        reasons: what is against a start, each with its mends; empty where the person may start.
+        plans: what is due soon.
+        through: last day on which nothing of the person's has lapsed.
+    """
 
     chain: Chain
     verdict: CrewVerdict
-    reasons: tuple[str, ...]
-    mends: tuple[Mismatch, ...]
+    reasons: tuple[Reason, ...]
+    plans: tuple[str, ...]
 
     @property
     def may_start(self) -> bool:
         return self.verdict.may_start
 
     @property
-    def plans(self) -> tuple[str, ...]:
-        """What is due soon, where the work may go ahead."""
-        return tuple(m.says for m in self.mends if m.severity == "plan")
+    def through(self) -> date | None:
+        lapses = self.verdict.good_until
+        return None if lapses is None else lapses - timedelta(days=1)
+
+
+def _mends(mismatch: Mismatch, code: str) -> tuple[tuple[str, str], ...]:
+    return tuple(
+        (one.says, reverse(one.page, args=[code, *one.args]) + one.query)
+        for one in mismatch.remedies
+        if one.page
+    )
+
+
+def _of_task(chain: Chain) -> list[Reason]:
+    """The break of the task itself, whoever wears what."""
+    broken = [link for link in chain.links if link.is_broken and link.name != "Face"]
+    if not broken:
+        return []
+    page = reverse("selection:task", args=[chain.site_code, chain.task_id])
+    says = f"The chain of {chain.task} breaks at {broken[0].name}."
+    return [Reason(says, (("See the chain", page),))]
 
 
 def saying_of(chain: Chain, verdict: CrewVerdict, *, sees_medical: bool) -> Saying:
     """The verdict in words for a reader who may, or may not, see what a clearance limits."""
-    if verdict.is_medical and not sees_medical:
-        return Saying(chain, verdict, () if verdict.may_start else (ASK,), ())
-    blocking = [m for m in verdict.mismatches if m.severity != "plan"]
-    reasons = [m.says for m in blocking]
+    against = [m for m in verdict.mismatches if m.severity != PLAN]
+    hidden = [m for m in against if m.code.startswith(MEDICAL) and not sees_medical]
+    reasons = [Reason(ASK)] if hidden else []
+    reasons += [Reason(m.says, _mends(m, chain.site_code)) for m in against if m not in hidden]
+    if not verdict.may_start:
+        reasons += _of_task(chain)
     if not verdict.may_start and not reasons:
-        broken = chain.first_break
-        reasons = [
-            f"The chain of {chain.task} breaks at {broken.name}; nobody may start."
-            if broken
-            else "It is not known why."
-        ]
-    return Saying(chain, verdict, tuple(reasons), verdict.mismatches)
+        reasons = [Reason("The chain does not hold; the reason is not recorded.")]
+    plans = tuple(m.says for m in verdict.mismatches if m.severity == PLAN)
+    return Saying(chain, verdict, tuple(reasons), plans)
 
 
 @dataclass(frozen=True)

@@ -28,7 +28,7 @@ SORTS = {
     "number": lambda row: row.worker.personnel_number,
     "employer": lambda row: row.worker.employer.casefold(),
     "ready": lambda row: row.order,
-    "until": lambda row: row.good_until,
+    "until": lambda row: row.lapses_on,
 }
 HEADER = (
     "personnel number",
@@ -41,7 +41,7 @@ HEADER = (
     "readiness",
     "tasks may start",
     "tasks",
-    "good until",
+    "first date to lapse",
 )
 
 
@@ -97,7 +97,7 @@ def _csv(request: SiteRequest, rows: list[PersonRow]) -> HttpResponse:
             row.says,
             row.may,
             row.of,
-            row.good_until,
+            row.lapses_on,
         )
         for row in rows
     )
@@ -107,6 +107,7 @@ def _csv(request: SiteRequest, rows: list[PersonRow]) -> HttpResponse:
 @site_page()
 @require_GET
 def people(request: SiteRequest) -> HttpResponse:
+    """Everybody of the site, with what they may start."""
     asked = _asked(request)
     rows = people_rows(_workers(request, asked), site=request.site, on=request.on)
     if asked["ready"]:
@@ -138,6 +139,7 @@ def people(request: SiteRequest) -> HttpResponse:
 @site_page()
 @require_GET
 def person(request: SiteRequest, pk: int) -> HttpResponse:
+    """What this person may do today, with what, until when; and the papers behind it."""
     worker = _worker(request, pk)
     sees_limits = may(request.role, "see clearance limits")
     tasks = [
@@ -158,6 +160,7 @@ def person(request: SiteRequest, pk: int) -> HttpResponse:
 @site_page()
 @require_GET
 def card(request: SiteRequest, pk: int) -> HttpResponse:
+    """The pocket card: one a task that the person may start."""
     worker = _worker(request, pk)
     # A card is carried in the open: it says what may be done, never what may not, nor why.
     tasks = [

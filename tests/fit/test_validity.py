@@ -6,7 +6,8 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from programme.fit.validity import last_lapsed_day, months_after, shorter_months
+from programme.fit.validity import last_lapsed_day, shorter_months
+from programme.roster.months import months_after
 
 
 @pytest.mark.parametrize(

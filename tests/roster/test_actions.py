@@ -58,7 +58,7 @@ def test_two_sites_may_use_the_same_personnel_number():
 def test_many_workers_are_stored_all_or_none():
     site, user = make_site(), make_user()
     rows = [new_worker(site, "A"), new_worker(site, "B"), new_worker(site, "A")]
-    with pytest.raises(ValueError, match="^Personnel number"):
+    with pytest.raises(ValueError, match=r"^Personnel number"):
         actions.add_workers(rows, site=site, by=user)
     assert not Worker.objects.exists()
     assert (

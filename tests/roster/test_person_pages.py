@@ -7,7 +7,7 @@ from django.urls import reverse
 
 from programme.roster.actions import record
 from programme.roster.models import Clearance
-from programme.selection.chain import HOLDS, LINKS, Chain, CrewVerdict, Link, Mismatch
+from programme.selection.chain import HOLDS, LINKS, Chain, CrewVerdict, Link, Mismatch, Remedy
 from programme.selection.person import ASK, saying_of
 from tests.builders import (
     DAY,
@@ -24,7 +24,7 @@ from tests.builders import (
     make_worker,
 )
 
-SECRET = "not to wear a negative-pressure respirator"
+LIMIT = "not to wear a negative-pressure respirator"
 
 
 def make_verdict(*, may_start=False, is_medical=True, mismatches=()):
@@ -51,25 +51,51 @@ def make_chain(*states):
     return Chain("north", "North", 1, "t", "Relining", DAY, "us", "US", "1", links, ())
 
 
-MEDICAL = Mismatch("medical-limits", "stop", "Face", SECRET)
+MEDICAL = Mismatch("medical-limits", "stop", "Face", LIMIT)
+LAPSED = Mismatch(
+    "fit-expired",
+    "stop",
+    "Face",
+    "fit test lapsed",
+    (Remedy("Record a fit test", "fit:test_add", (), "?worker=1"),),
+)
+
+
+def says_of(saying):
+    return [reason.says for reason in saying.reasons]
 
 
 def test_a_reader_without_the_right_is_told_to_ask_where_the_reason_is_medical():
-    verdict = make_verdict(mismatches=(MEDICAL,))
-    assert saying_of(make_chain(), verdict, sees_medical=False).reasons == (ASK,)
-    assert saying_of(make_chain(), verdict, sees_medical=True).reasons == (SECRET,)
+    verdict = make_verdict(mismatches=(MEDICAL, LAPSED))
+    assert says_of(saying_of(make_chain(), verdict, sees_medical=False)) == [ASK, LAPSED.says]
+    assert says_of(saying_of(make_chain(), verdict, sees_medical=True)) == [LIMIT, LAPSED.says]
 
 
 def test_a_reason_that_is_not_medical_is_told_to_everybody():
-    lapsed = Mismatch("fit-expired", "stop", "Face", "fit test lapsed")
-    verdict = make_verdict(is_medical=False, mismatches=(lapsed,))
-    assert saying_of(make_chain(), verdict, sees_medical=False).reasons == ("fit test lapsed",)
+    verdict = make_verdict(is_medical=False, mismatches=(LAPSED,))
+    assert says_of(saying_of(make_chain(), verdict, sees_medical=False)) == [LAPSED.says]
 
 
-def test_a_no_without_a_reason_of_the_persons_own_names_the_broken_link():
-    states = ["broken", *[HOLDS] * 5]
-    said = saying_of(make_chain(*states), make_verdict(is_medical=False), sees_medical=True)
-    assert said.reasons == ("The chain of Relining breaks at Air; nobody may start.",)
+def test_a_break_of_the_task_itself_is_told_with_the_persons_own_reasons():
+    chain = make_chain("broken", *[HOLDS] * 5)
+    said = saying_of(chain, make_verdict(is_medical=False, mismatches=(LAPSED,)), sees_medical=True)
+    assert says_of(said) == [LAPSED.says, "The chain of Relining breaks at Air."]
+
+
+def test_a_no_is_never_left_without_a_word():
+    said = saying_of(make_chain(), make_verdict(is_medical=False), sees_medical=True)
+    assert len(said.reasons) == 1
+
+
+def test_a_reason_comes_with_the_page_that_mends_it():
+    said = saying_of(make_chain(), make_verdict(mismatches=(LAPSED,)), sees_medical=True)
+    assert said.reasons[0].mends == (("Record a fit test", "/s/north/fit-tests/new/?worker=1"),)
+
+
+def test_the_expiry_day_itself_no_longer_counts():
+    verdict = make_verdict(may_start=True, is_medical=False)
+    said = saying_of(make_chain(), verdict, sees_medical=True)
+    assert said.through == verdict.good_until - timedelta(days=1)
 
 
 def url(name, *args, code="north"):
