@@ -19,6 +19,18 @@ NAV = (
 )
 
 
+PEOPLE = frozenset({"selection:people", "selection:person", "selection:card"})
+
+
+def _entry_of(view: str, app: str) -> str:
+    """The entry of the main navigation to which a page belongs."""
+    if app == "roster" or view in PEOPLE:
+        return "selection:people"
+    if app == "selection":
+        return "selection:today" if view == "selection:today" else "selection:tasks"
+    return next((name for _, name in NAV if name.split(":")[0] == app), "")
+
+
 def site_and_nav(request: HttpRequest) -> dict[str, Any]:
     """`site`, `role_label`, `nav`, `on`, `today`, `sites` and `can` (act -> bool)."""
     site = getattr(request, "site", None)
@@ -29,17 +41,8 @@ def site_and_nav(request: HttpRequest) -> dict[str, Any]:
     view = request.resolver_match.view_name if request.resolver_match else ""
     nav = []
     for label, name in NAV:
-        app = name.split(":")[0]
-        is_here = view == name or (app == here and app != "selection")
-        if (
-            name == "selection:tasks"
-            and here == "selection"
-            and view != "selection:today"
-        ):
-            is_here = True
-        nav.append(
-            {"label": label, "url": reverse(name, args=[site.code]), "is_here": is_here}
-        )
+        is_here = name == _entry_of(view, here)
+        nav.append({"label": label, "url": reverse(name, args=[site.code]), "is_here": is_here})
     return {
         "site": site,
         "role": role,

@@ -173,3 +173,19 @@ def test_a_name_is_never_run_as_markup():
     worker = make_worker(name="<script>alert(1)</script>")
     text = client_for(make_user()).get(url("worker_change", worker.pk)).content.decode()
     assert "<script>alert" not in text
+
+
+@pytest.mark.parametrize(
+    ("page", "entry"),
+    [
+        ("roster:worker_add", "People"),
+        ("selection:people", "People"),
+        ("selection:today", "Today"),
+        ("selection:tasks", "Tasks"),
+        ("fit:test_add", "Fit tests"),
+    ],
+)
+def test_the_main_navigation_marks_one_entry(page, entry):
+    client = client_for(make_user(site=make_site()))
+    nav = client.get(reverse(page, args=["north"])).context["nav"]
+    assert [one["label"] for one in nav if one["is_here"]] == [entry]
