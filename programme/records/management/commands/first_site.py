@@ -23,7 +23,7 @@ class Command(BaseCommand):
         packs = [info.name for info in available()]
         parser.add_argument("code", help="short name in addresses, e.g. tarnbeck")
         parser.add_argument("name", help="name of the workplace")
-        parser.add_argument("--rules", choices=packs, default=packs[0], help="rule pack")
+        parser.add_argument("--rules", choices=packs, required=True, help="rule pack")
         parser.add_argument("--administrator", required=True, help="user name to make or to use")
         parser.add_argument("--time-zone", default="UTC", help="e.g. Europe/London")
 
