@@ -281,7 +281,11 @@ class Task(models.Model):
             models.CheckConstraint(
                 name="task_oxygen_percent_where_measured",
                 condition=~Q(oxygen="measured")
-                | Q(oxygen_percent__gte=0, oxygen_percent__lte=100),
+                | Q(
+                    oxygen_percent__isnull=False,
+                    oxygen_percent__gte=0,
+                    oxygen_percent__lte=100,
+                ),
                 violation_error_message="Give the measured oxygen, 0 to 100 %.",
             ),
         ]
@@ -444,7 +448,7 @@ class Sample(Replaceable):
             ),
             models.CheckConstraint(
                 name="censored_sample_has_lod",
-                condition=Q(is_censored=False) | Q(lod__gt=0, lod__lte=1e6),
+                condition=Q(is_censored=False) | Q(lod__isnull=False, lod__gt=0, lod__lte=1e6),
                 violation_error_message="A result below detection needs its detection limit.",
             ),
             models.CheckConstraint(

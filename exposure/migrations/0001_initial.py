@@ -181,7 +181,7 @@ class Migration(migrations.Migration):
         ),
         migrations.AddConstraint(
             model_name='task',
-            constraint=models.CheckConstraint(condition=models.Q(models.Q(('oxygen', 'measured'), _negated=True), models.Q(('oxygen_percent__gte', 0), ('oxygen_percent__lte', 100)), _connector='OR'), name='task_oxygen_percent_where_measured', violation_error_message='Give the measured oxygen, 0 to 100 %.'),
+            constraint=models.CheckConstraint(condition=models.Q(models.Q(('oxygen', 'measured'), _negated=True), models.Q(('oxygen_percent__gte', 0), ('oxygen_percent__isnull', False), ('oxygen_percent__lte', 100)), _connector='OR'), name='task_oxygen_percent_where_measured', violation_error_message='Give the measured oxygen, 0 to 100 %.'),
         ),
         migrations.AddConstraint(
             model_name='taskagent',
@@ -205,7 +205,7 @@ class Migration(migrations.Migration):
         ),
         migrations.AddConstraint(
             model_name='sample',
-            constraint=models.CheckConstraint(condition=models.Q(('is_censored', False), models.Q(('lod__gt', 0), ('lod__lte', 1000000.0)), _connector='OR'), name='censored_sample_has_lod', violation_error_message='A result below detection needs its detection limit.'),
+            constraint=models.CheckConstraint(condition=models.Q(('is_censored', False), models.Q(('lod__gt', 0), ('lod__isnull', False), ('lod__lte', 1000000.0)), _connector='OR'), name='censored_sample_has_lod', violation_error_message='A result below detection needs its detection limit.'),
         ),
         migrations.AddConstraint(
             model_name='sample',
