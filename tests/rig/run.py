@@ -21,8 +21,6 @@ ON_POSTGRES = ("-m", "database or browser")
 
 def main(words: list[str]) -> int:
     """Both runs; the number of those that went wrong."""
-    # Being told to stop is no reason to leave a server behind: SystemExit passes every `finally`.
-    signal.signal(signal.SIGTERM, lambda number, _frame: sys.exit(128 + number))
     # Being told to end still stops the server and removes its folder.
     signal.signal(signal.SIGTERM, lambda *_: sys.exit(143))
     os.environ["CHROMIUM"] = machine.need("Chromium", machine.chromium, "chromium")
