@@ -325,7 +325,7 @@ def _mean_edge(
     data: Evidence, fit: tuple[float, float, float], *, goal: float, sign: float
 ) -> float:
     """ln of the mean at which twice the loss of log-likelihood, best over sigma, is the goal."""
-    from scipy.optimize import brentq, minimize_scalar  # noqa: PLC0415 - costs start-up time
+    from scipy.optimize import brentq, minimize_scalar
 
     mu, sigma, top = fit
     best = mu + 0.5 * sigma**2

@@ -128,7 +128,7 @@ def _fit_choices(request: SiteRequest) -> dict[str, list[tuple[str, str]]]:
 _CHOICES: dict[str, Callable[[SiteRequest], dict[str, list[tuple[str, str]]]]] = {
     "samples": _sample_choices,
     "fit_tests": _fit_choices,
-    "workers": lambda request: {},
+    "workers": lambda _request: {},
 }
 
 

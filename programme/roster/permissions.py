@@ -49,12 +49,7 @@ ROLE_ACTS: dict[str, frozenset[str]] = {
 
 def role_at(user: AbstractBaseUser, site: Site) -> str | None:
     """The user's role at the site, or None."""
-    row = (
-        Membership.objects.filter(user=user, site=site)
-        .values_list("role", flat=True)
-        .first()
-    )
-    return row
+    return Membership.objects.filter(user=user, site=site).values_list("role", flat=True).first()
 
 
 def may(role: str | None, act: str) -> bool:
