@@ -152,15 +152,11 @@ class ExposureLimit(models.Model):
     site = models.ForeignKey(
         Site, on_delete=models.PROTECT, null=True, blank=True, related_name="own_limits"
     )
-    list_code = models.CharField(
-        max_length=20, help_text="e.g. US-PEL; SITE for the site's own"
-    )
+    list_code = models.CharField(max_length=20, help_text="e.g. US-PEL; SITE for the site's own")
     edition = models.CharField(max_length=40, blank=True)
     kind = models.CharField(max_length=4, choices=Kind.choices)
     fraction = models.CharField(max_length=12, choices=Fraction.choices)
-    value = models.FloatField(
-        validators=[MinValueValidator(1e-12), MaxValueValidator(1e6)]
-    )
+    value = models.FloatField(validators=[MinValueValidator(1e-12), MaxValueValidator(1e6)])
     unit = models.CharField(max_length=10, choices=Unit.choices)
     averaging_min = models.PositiveSmallIntegerField()
     note = models.CharField(max_length=200, blank=True)
@@ -181,9 +177,7 @@ class ExposureLimit(models.Model):
         ]
 
     def __str__(self) -> str:
-        return (
-            f"{self.agent}: {self.value:g} {self.unit} ({self.list_code} {self.kind})"
-        )
+        return f"{self.agent}: {self.value:g} {self.unit} ({self.list_code} {self.kind})"
 
 
 class TaskQuerySet(SiteRows):
@@ -233,18 +227,14 @@ class Task(models.Model):
         validators=[MinValueValidator(0), MaxValueValidator(100)],
         help_text="% relative humidity, 0 to 100",
     )
-    oxygen = models.CharField(
-        max_length=12, choices=Oxygen.choices, default=Oxygen.UNKNOWN
-    )
+    oxygen = models.CharField(max_length=12, choices=Oxygen.choices, default=Oxygen.UNKNOWN)
     oxygen_percent = models.FloatField(
         null=True,
         blank=True,
         validators=[MinValueValidator(0), MaxValueValidator(100)],
         help_text="% by volume, needed where measured",
     )
-    is_idlh = models.BooleanField(
-        "immediately dangerous to life or health", default=False
-    )
+    is_idlh = models.BooleanField("immediately dangerous to life or health", default=False)
     has_oil_aerosol = models.BooleanField("oil aerosol in the air", default=False)
     irritates_eyes = models.BooleanField("the air irritates the eyes", default=False)
     changed_on = models.DateField(
@@ -310,9 +300,7 @@ class TaskAgent(models.Model):
         BOTH = "both", "particles and vapour together"
 
     task = models.ForeignKey(Task, on_delete=models.PROTECT, related_name="agents")
-    agent = models.ForeignKey(
-        Agent, on_delete=models.PROTECT, related_name="task_agents"
-    )
+    agent = models.ForeignKey(Agent, on_delete=models.PROTECT, related_name="task_agents")
     form = models.CharField(max_length=12, choices=Form.choices)
     fraction = models.CharField(max_length=12, choices=Fraction.choices)
     mmad_um = models.FloatField(
@@ -387,16 +375,12 @@ class Sample(Replaceable):
         SHORT = "short", "short term (15 min)"
         CEILING = "ceiling", "ceiling (instant)"
 
-    task_agent = models.ForeignKey(
-        TaskAgent, on_delete=models.PROTECT, related_name="samples"
-    )
+    task_agent = models.ForeignKey(TaskAgent, on_delete=models.PROTECT, related_name="samples")
     worker = models.ForeignKey(
         Worker, on_delete=models.PROTECT, null=True, blank=True, related_name="samples"
     )
     sampled_on = models.DateField()
-    where = models.CharField(
-        max_length=12, choices=Where.choices, default=Where.PERSONAL
-    )
+    where = models.CharField(max_length=12, choices=Where.choices, default=Where.PERSONAL)
     span = models.CharField(max_length=12, choices=Span.choices, default=Span.FULL)
     minutes = models.FloatField(
         null=True,
@@ -416,12 +400,8 @@ class Sample(Replaceable):
     )
     result_as_reported = models.CharField(max_length=40)
     unit_as_reported = models.CharField(max_length=20)
-    value = models.FloatField(
-        help_text="the result, or the detection limit where below it"
-    )
-    is_censored = models.BooleanField(
-        default=False, help_text="below the detection limit"
-    )
+    value = models.FloatField(help_text="the result, or the detection limit where below it")
+    is_censored = models.BooleanField(default=False, help_text="below the detection limit")
     lod = models.FloatField("Detection limit", null=True, blank=True)
     unit = models.CharField(max_length=10, choices=Unit.choices)
     method = models.CharField(max_length=120, blank=True)

@@ -25,11 +25,7 @@ def _switch(name: str, *, default: bool) -> bool:
 
 
 def _words(name: str, default: str = "") -> list[str]:
-    return [
-        word.strip()
-        for word in os.environ.get(name, default).split(",")
-        if word.strip()
-    ]
+    return [word.strip() for word in os.environ.get(name, default).split(",") if word.strip()]
 
 
 DEBUG = _switch("HALEWARD_DEBUG", default=False)

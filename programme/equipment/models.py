@@ -17,18 +17,14 @@ class FacepieceKind(models.TextChoices):
     LOOSE = "loose_fitting_facepiece", "loose-fitting facepiece"
 
 
-TIGHT_KINDS = frozenset(
-    {"filtering_facepiece", "quarter_mask", "half_mask", "full_facepiece"}
-)
+TIGHT_KINDS = frozenset({"filtering_facepiece", "quarter_mask", "half_mask", "full_facepiece"})
 
 
 class Facepiece(models.Model):
     """A model of facepiece that the site keeps."""
 
     site = models.ForeignKey(Site, on_delete=models.PROTECT, related_name="facepieces")
-    name = models.CharField(
-        max_length=120, help_text="maker, model and style as on the label"
-    )
+    name = models.CharField(max_length=120, help_text="maker, model and style as on the label")
     kind = models.CharField(max_length=30, choices=FacepieceKind.choices)
     withdrawn_on = models.DateField(null=True, blank=True)
 
@@ -59,9 +55,7 @@ class SizeRows(SiteRows):
 class FacepieceSize(models.Model):
     """One size of a facepiece; what a fit test is valid for."""
 
-    facepiece = models.ForeignKey(
-        Facepiece, on_delete=models.PROTECT, related_name="sizes"
-    )
+    facepiece = models.ForeignKey(Facepiece, on_delete=models.PROTECT, related_name="sizes")
     label = models.CharField(max_length=20)
     order = models.PositiveSmallIntegerField(default=0)
 
@@ -70,9 +64,7 @@ class FacepieceSize(models.Model):
     class Meta:
         ordering = ["facepiece", "order", "label"]
         constraints = [
-            models.UniqueConstraint(
-                fields=["facepiece", "label"], name="size_once_a_facepiece"
-            ),
+            models.UniqueConstraint(fields=["facepiece", "label"], name="size_once_a_facepiece"),
         ]
 
     def __str__(self) -> str:
@@ -175,12 +167,8 @@ class Assembly(models.Model):
 
     site = models.ForeignKey(Site, on_delete=models.PROTECT, related_name="assemblies")
     name = models.CharField(max_length=160)
-    respirator_class = models.CharField(
-        max_length=40, help_text="class of the rule pack"
-    )
-    facepiece = models.ForeignKey(
-        Facepiece, on_delete=models.PROTECT, related_name="assemblies"
-    )
+    respirator_class = models.CharField(max_length=40, help_text="class of the rule pack")
+    facepiece = models.ForeignKey(Facepiece, on_delete=models.PROTECT, related_name="assemblies")
     element = models.ForeignKey(
         Element,
         on_delete=models.PROTECT,
@@ -233,12 +221,8 @@ class ChangeRows(ReplaceableRows):
 class FilterChange(Replaceable):
     """A worker fitted a new filter or cartridge to an assembly."""
 
-    worker = models.ForeignKey(
-        Worker, on_delete=models.PROTECT, related_name="filter_changes"
-    )
-    assembly = models.ForeignKey(
-        Assembly, on_delete=models.PROTECT, related_name="changes"
-    )
+    worker = models.ForeignKey(Worker, on_delete=models.PROTECT, related_name="filter_changes")
+    assembly = models.ForeignKey(Assembly, on_delete=models.PROTECT, related_name="changes")
     fitted_at = models.DateTimeField()
     shifts_used = models.FloatField(
         null=True,
@@ -256,8 +240,7 @@ class FilterChange(Replaceable):
         constraints = [
             models.CheckConstraint(
                 name="shifts_used_0_to_2000",
-                condition=Q(shifts_used=None)
-                | Q(shifts_used__gte=0, shifts_used__lte=2000),
+                condition=Q(shifts_used=None) | Q(shifts_used__gte=0, shifts_used__lte=2000),
                 violation_error_message="Shifts used must be 0 to 2000.",
             ),
         ]

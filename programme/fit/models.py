@@ -21,12 +21,8 @@ class FitTest(Replaceable):
         FAILED = "failed", "failed"
         INCOMPLETE = "incomplete", "incomplete"
 
-    worker = models.ForeignKey(
-        Worker, on_delete=models.PROTECT, related_name="fit_tests"
-    )
-    size = models.ForeignKey(
-        FacepieceSize, on_delete=models.PROTECT, related_name="fit_tests"
-    )
+    worker = models.ForeignKey(Worker, on_delete=models.PROTECT, related_name="fit_tests")
+    size = models.ForeignKey(FacepieceSize, on_delete=models.PROTECT, related_name="fit_tests")
     tested_on = models.DateField()
     rule_pack = models.CharField(max_length=40)
     protocol = models.CharField(max_length=40, help_text="protocol of the rule pack")
@@ -79,18 +75,14 @@ class FitTest(Replaceable):
 class FitExercise(models.Model):
     """One exercise of a test, in the order of its protocol."""
 
-    test = models.ForeignKey(
-        FitTest, on_delete=models.PROTECT, related_name="exercises"
-    )
+    test = models.ForeignKey(FitTest, on_delete=models.PROTECT, related_name="exercises")
     order = models.PositiveSmallIntegerField()
     exercise = models.CharField(max_length=40, help_text="exercise of the protocol")
     reading = models.PositiveSmallIntegerField(default=1)
     fit_factor = models.FloatField(
         null=True, blank=True, validators=[MinValueValidator(1), MaxValueValidator(1e9)]
     )
-    is_counted = models.BooleanField(
-        default=True, help_text="counts in the overall fit factor"
-    )
+    is_counted = models.BooleanField(default=True, help_text="counts in the overall fit factor")
 
     class Meta:
         ordering = ["test", "order", "reading"]
@@ -101,8 +93,7 @@ class FitExercise(models.Model):
             ),
             models.CheckConstraint(
                 name="exercise_fit_factor_between_1_and_1e9",
-                condition=Q(fit_factor=None)
-                | Q(fit_factor__gte=1, fit_factor__lte=1e9),
+                condition=Q(fit_factor=None) | Q(fit_factor__gte=1, fit_factor__lte=1e9),
                 violation_error_message="Fit factor must be 1 to 1 000 000 000.",
             ),
         ]

@@ -24,9 +24,7 @@ class Entry(models.Model):
         ordering = ["chain", "serial"]
         verbose_name_plural = "entries"
         constraints = [
-            models.UniqueConstraint(
-                fields=["chain", "serial"], name="one_entry_a_serial"
-            ),
+            models.UniqueConstraint(fields=["chain", "serial"], name="one_entry_a_serial"),
         ]
 
     def __str__(self) -> str:

@@ -18,12 +18,8 @@ class ImportBatch(models.Model):
     file_name = models.CharField(max_length=200)
     sha256 = models.CharField(max_length=64, db_index=True)
     table = models.JSONField(help_text="header and rows as read, text only")
-    reading = models.JSONField(
-        default=dict, help_text="encoding, delimiter, decimal mark, sheet"
-    )
-    matching = models.JSONField(
-        default=dict, help_text="field -> column number or fixed value"
-    )
+    reading = models.JSONField(default=dict, help_text="encoding, delimiter, decimal mark, sheet")
+    matching = models.JSONField(default=dict, help_text="field -> column number or fixed value")
     started_at = models.DateTimeField(auto_now_add=True)
     started_by = models.CharField(max_length=150)
     stored_at = models.DateTimeField(null=True, blank=True)

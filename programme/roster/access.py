@@ -56,20 +56,14 @@ def site_page(
 
     def wrap(view: Callable[..., HttpResponse]) -> Callable[..., HttpResponse]:
         @wraps(view)
-        def page(
-            request: SiteRequest, code: str, *args: Any, **kwargs: Any
-        ) -> HttpResponse:
-            request.site = get_object_or_404(
-                Site.objects.for_user(request.user), code=code
-            )
+        def page(request: SiteRequest, code: str, *args: Any, **kwargs: Any) -> HttpResponse:
+            request.site = get_object_or_404(Site.objects.for_user(request.user), code=code)
             role = role_at(request.user, request.site)
             if not may(role, act):
                 who = Role(role).label if role else "no role"
                 raise PermissionDenied(f"A {who.lower()} may not {ACTS[act]}.")
             request.role = str(role)
-            request.on, request.on_text, fault = day_asked(
-                request, request.site.today()
-            )
+            request.on, request.on_text, fault = day_asked(request, request.site.today())
             if fault:
                 messages.error(request, fault)
             request.session["site"] = code

@@ -35,9 +35,7 @@ class Site(models.Model):
 
     code = models.SlugField(max_length=40, unique=True)
     name = models.CharField(max_length=120)
-    rule_pack = models.CharField(
-        max_length=40, help_text="name of a rule pack, e.g. us-2026-1"
-    )
+    rule_pack = models.CharField(max_length=40, help_text="name of a rule pack, e.g. us-2026-1")
     adopted_limit_lists = models.JSONField(
         default=list,
         blank=True,
@@ -115,10 +113,7 @@ class Site(models.Model):
                 name="site_air_is_earthly",
                 condition=Q(temperature_c__gte=-40, temperature_c__lte=60)
                 & Q(altitude_m__gte=-450, altitude_m__lte=5500)
-                & (
-                    Q(pressure_kpa=None)
-                    | Q(pressure_kpa__gte=50, pressure_kpa__lte=110)
-                ),
+                & (Q(pressure_kpa=None) | Q(pressure_kpa__gte=50, pressure_kpa__lte=110)),
                 violation_error_message="Temperature -40 to 60 °C, altitude -450 to 5500 m, "
                 "pressure 50 to 110 kPa.",
             ),
@@ -155,9 +150,7 @@ class Membership(models.Model):
     class Meta:
         ordering = ["site", "user"]
         constraints = [
-            models.UniqueConstraint(
-                fields=["user", "site"], name="one_role_a_user_and_site"
-            ),
+            models.UniqueConstraint(fields=["user", "site"], name="one_role_a_user_and_site"),
         ]
 
     def __str__(self) -> str:
@@ -294,23 +287,15 @@ class Clearance(Replaceable):
         ABLE_WITH_LIMITS = "able_with_limits", "able with limits"
         NOT_ABLE = "not_able", "not able"
 
-    worker = models.ForeignKey(
-        Worker, on_delete=models.PROTECT, related_name="clearances"
-    )
+    worker = models.ForeignKey(Worker, on_delete=models.PROTECT, related_name="clearances")
     outcome = models.CharField(max_length=20, choices=Outcome.choices)
     decided_on = models.DateField()
     expires_on = models.DateField(
         null=True, blank=True, help_text="next review set by the clinician, if any"
     )
-    no_negative_pressure = models.BooleanField(
-        "no negative-pressure respirator", default=False
-    )
-    no_scba = models.BooleanField(
-        "no self-contained breathing apparatus", default=False
-    )
-    heaviest_work = models.CharField(
-        max_length=20, choices=WorkRate.choices, blank=True
-    )
+    no_negative_pressure = models.BooleanField("no negative-pressure respirator", default=False)
+    no_scba = models.BooleanField("no self-contained breathing apparatus", default=False)
+    heaviest_work = models.CharField(max_length=20, choices=WorkRate.choices, blank=True)
     max_hours_a_shift = models.FloatField(
         null=True,
         blank=True,
@@ -318,9 +303,7 @@ class Clearance(Replaceable):
     )
     follow_up_needed = models.BooleanField(default=False)
     copy_given = models.BooleanField("worker has a copy", default=False)
-    decided_by = models.CharField(
-        "physician or other licensed professional", max_length=120
-    )
+    decided_by = models.CharField("physician or other licensed professional", max_length=120)
 
     objects = WorkerRecords.as_manager()
 
@@ -347,9 +330,7 @@ class Clearance(Replaceable):
 class Training(Replaceable):
     """Respirator training with demonstrated knowledge."""
 
-    worker = models.ForeignKey(
-        Worker, on_delete=models.PROTECT, related_name="trainings"
-    )
+    worker = models.ForeignKey(Worker, on_delete=models.PROTECT, related_name="trainings")
     trained_on = models.DateField()
     families = models.JSONField(
         default=list,
@@ -377,9 +358,7 @@ class SealNote(Replaceable):
         CLEAN_SHAVEN = "clean_shaven", "face is clear where the seal lies"
         FACE_CHANGE = "face_change", "face changed (scar, teeth, surgery, weight)"
 
-    worker = models.ForeignKey(
-        Worker, on_delete=models.PROTECT, related_name="seal_notes"
-    )
+    worker = models.ForeignKey(Worker, on_delete=models.PROTECT, related_name="seal_notes")
     noted_on = models.DateField()
     kind = models.CharField(max_length=20, choices=Kind.choices)
     noted_by = models.CharField(max_length=120, blank=True)

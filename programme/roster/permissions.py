@@ -59,9 +59,7 @@ def may(role: str | None, act: str) -> bool:
         ValueError: no such act.
     """
     if act not in ACTS:
-        raise ValueError(
-            f"act: {act!r} is not known; known are {', '.join(sorted(ACTS))}"
-        )
+        raise ValueError(f"act: {act!r} is not known; known are {', '.join(sorted(ACTS))}")
     return role is not None and act in ROLE_ACTS.get(role, frozenset())
 
 

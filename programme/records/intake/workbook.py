@@ -97,7 +97,7 @@ class _TextScan:
     def __init__(self) -> None:
         self.longest = self._now = 0
 
-    def start(self, tag: str, attributes: dict[str, str]) -> None:  # noqa: ARG002 - what every reader is given
+    def start(self, tag: str, attributes: dict[str, str]) -> None:  # noqa: ARG002 - readers share it
         """One opening tag."""
         if tag.rpartition(":")[2] == "si":
             self._now = 0

@@ -6,7 +6,7 @@ from datetime import date, timedelta
 
 from filtration import loading
 from filtration.breathing import WORK_CLASSES
-from filtration.schedule import Limit, shortest, shifts
+from filtration.schedule import Limit, shifts, shortest
 from programme.equipment.models import Assembly
 from programme.figures import down, near, up
 from programme.selection.chain import (
