@@ -11,6 +11,7 @@ from typing import TypeVar
 Found = TypeVar("Found", str, Path)
 
 CHROMIUM_NAMES = ("chromium", "chromium-browser", "google-chrome")
+NO_MORE = ("--no-install-recommends",)
 DEBIAN_POSTGRES = Path("/usr/lib/postgresql")
 
 
@@ -41,8 +42,8 @@ def _is_postgres_bin(folder: Path) -> bool:
     return (folder / "initdb").exists() and (folder / "postgres").exists()
 
 
-def need(what: str, find: Callable[[], Found | None], package: str) -> Found:
-    """What `find` finds, after installing the Debian package as root if need be.
+def need(what: str, find: Callable[[], Found | None], packages: str) -> Found:
+    """What `find` finds, after installing the Debian packages as root if need be.
 
     Raises:
         Missing: neither found nor installable.
@@ -50,15 +51,15 @@ def need(what: str, find: Callable[[], Found | None], package: str) -> Found:
     if found := find():
         return found
     if os.geteuid() == 0 and shutil.which("apt-get"):
-        print(f"{what} is missing: installing {package}", flush=True)
+        print(f"{what} is missing: installing {packages}", flush=True)
         environment = {**os.environ, "DEBIAN_FRONTEND": "noninteractive"}
-        for command in (["update", "-q"], ["install", "-qy", "--no-install-recommends", package]):
+        for command in (["update", "-q"], ["install", "-qy", *NO_MORE, *packages.split()]):
             subprocess.run(
                 ["apt-get", *command], env=environment, check=False, stdin=subprocess.DEVNULL
             )
         if found := find():
             return found
-    raise Missing(f"{what} is missing; install it (Debian: apt-get install {package})")
+    raise Missing(f"{what} is missing; install it (Debian: apt-get install {packages})")
 
 
 def is_root() -> bool:

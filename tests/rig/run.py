@@ -23,7 +23,8 @@ def main(words: list[str]) -> int:
     """Both runs; the number of those that went wrong."""
     # Being told to end still stops the server and removes its folder.
     signal.signal(signal.SIGTERM, lambda *_: sys.exit(143))
-    os.environ["CHROMIUM"] = machine.need("Chromium", machine.chromium, "chromium")
+    # Without a font every text is nothing wide, and a page that spills over would not show it.
+    os.environ["CHROMIUM"] = machine.need("Chromium", machine.chromium, "chromium fonts-liberation")
     programs = machine.need("PostgreSQL", machine.postgres_bin, "postgresql")
     wrong = [not run("SQLite", {"DATABASE_URL": ""}, words)]
     with postgres.running(programs) as address:
