@@ -1,0 +1,1 @@
+"""Geometry of the drawings, once, for the screen (SVG) and for paper (reportlab)."""
