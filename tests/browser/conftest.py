@@ -19,6 +19,8 @@ QUIET = (
 )
 WIDE = {"width": 1280, "height": 900}
 PHONE = {"width": 390, "height": 844}
+# Long enough for a busy machine; what is not there after it does not come.
+PATIENCE_MS = 10_000
 
 
 @pytest.fixture(scope="session")
@@ -37,6 +39,7 @@ def chromium():
 def context(chromium, live_server):
     """A browser nobody has signed in to, as wide as a desk's."""
     context = chromium.new_context(viewport=WIDE, base_url=live_server.url)
+    context.set_default_timeout(PATIENCE_MS)
     yield context
     context.close()
 
