@@ -6,7 +6,7 @@ from dataclasses import dataclass
 from datetime import date
 from typing import Any, cast
 
-from crispy_forms.layout import Submit
+from crispy_forms.layout import Div, Submit
 from django import forms
 from django.db.models import Q
 from django.urls import reverse
@@ -105,8 +105,18 @@ class ChoiceForm(forms.Form):
         return Chosen(self.site, found["worker"], found["size"], protocol, self.pack)
 
 
+class FigureField(MeasuredField):
+    """A fit factor that is wanted; an empty box makes the test incomplete, not the form faulty."""
+
+    def validate(self, value: Any) -> None:
+        """Whatever could be read is taken."""
+
+
 class FitTestForm(AskingForm):
     """The figures of one test in the order of its protocol; works out what they come to."""
+
+    # The browser must let an unfinished test through; what must be there is checked here.
+    use_required_attribute = False
 
     tested_on = DayField(label="Date of test", earliest=date(1970, 1, 1))
     tester = forms.CharField(max_length=120, label="Tested by")
@@ -129,12 +139,10 @@ class FitTestForm(AskingForm):
         self.chosen, self.today, self.old = chosen, today, old
         self.slots = slots_of(chosen.protocol)
         self.draft: Draft | None = None
-        names = ["tested_on", "tester", "element_used", *self._add_figures()]
-        if self.slots:
-            names.append("as_reported")
-        else:
+        figures = Div(*self._add_figures(), css_class="row figures")
+        last = ["as_reported", "note"] if self.slots else ["note"]
+        if not self.slots:
             del self.fields["as_reported"]
-        names.append("note")
         if old is not None:
             self.fields["reason"] = forms.CharField(
                 label="Reason for the correction",
@@ -142,9 +150,14 @@ class FitTestForm(AskingForm):
                 widget=forms.Textarea(attrs={"rows": 2}),
                 help_text="both tests stay on file, with this reason",
             )
-            names.append("reason")
-        self.set_layout(*names, submit="Record the correction" if old else "Record fit test")
-        self.helper.add_input(Submit("work_out", "Work out", css_class="plain"))
+            last.append("reason")
+        self.set_layout(
+            Div("tested_on", "tester", "element_used", css_class="row"),
+            figures,
+            Div(*last, css_class="row"),
+            submit="Record the correction" if old else "Record fit test",
+            also=[Submit("work_out", "Work out", css_class="plain")],
+        )
         self.helper.attrs = {
             "hx-post": f"{reverse('fit:preview', args=[chosen.site.code])}?{chosen.query}",
             "hx-trigger": "input delay:400ms",
@@ -162,11 +175,11 @@ class FitTestForm(AskingForm):
             )
             return ["is_passed"]
         for slot in self.slots:
-            self.fields[slot.key] = MeasuredField(
+            self.fields[slot.key] = FigureField(
                 label=slot.label,
                 at_least=1,
                 at_most=HIGHEST_FIT_FACTOR,
-                required=False,
+                required=slot.is_counted,
                 help_text="" if slot.is_counted else "kept, does not count",
             )
         return [slot.key for slot in self.slots]

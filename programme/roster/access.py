@@ -58,12 +58,12 @@ def site_page(
         @wraps(view)
         def page(request: SiteRequest, code: str, *args: Any, **kwargs: Any) -> HttpResponse:
             request.site = get_object_or_404(Site.objects.for_user(request.user), code=code)
-            role = role_at(request.user, request.site)
-            if not may(role, act):
-                who = Role(role).label if role else "no role"
-                raise PermissionDenied(f"A {who.lower()} may not {ACTS[act]}.")
-            request.role = str(role)
+            request.role = str(role_at(request.user, request.site))
             request.on, request.on_text, fault = day_asked(request, request.site.today())
+            # Only now: the page that says no shows site, role and day as well.
+            if not may(request.role, act):
+                who = Role(request.role).label.lower()
+                raise PermissionDenied(f"As {who} you may not {ACTS[act]}.")
             if fault:
                 messages.error(request, fault)
             request.session["site"] = code

@@ -7,7 +7,7 @@ from datetime import date
 from typing import Any, TypeVar
 
 from crispy_forms.helper import FormHelper
-from crispy_forms.layout import Layout, Submit
+from crispy_forms.layout import ButtonHolder, Layout, Submit
 from django import forms
 from django.core.paginator import Page, Paginator
 from django.http import HttpRequest
@@ -25,10 +25,10 @@ class AskingForm(forms.Form):
 
     is_meant = forms.BooleanField(required=False, label="Yes, this is meant")
 
-    def set_layout(self, *parts: Any, submit: str) -> None:
-        """Lay out the form; the tick stands before the button once a question was asked."""
+    def set_layout(self, *parts: Any, submit: str, also: Sequence[Submit] = ()) -> None:
+        """Lay out the form; the tick stands before the buttons once a question was asked."""
         self.helper = FormHelper()
-        self.helper.layout = Layout(*parts, Submit("send", submit))
+        self.helper.layout = Layout(*parts, ButtonHolder(Submit("send", submit), *also))
         if self.is_bound and self.data.get(self.add_prefix("is_meant")):
             self._show_tick()
 

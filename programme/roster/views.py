@@ -34,7 +34,7 @@ START_PAGES: dict[str, str] = {
 def start(request: HttpRequest) -> HttpResponse:
     """Send a signed-in user to the start page of their role at their last or only site."""
     sites = list(Site.objects.for_user(request.user))
-    last = request.session.get("site")
+    last = "" if "choose" in request.GET else request.session.get("site")
     site = next((one for one in sites if one.code == last), None)
     if site is None and len(sites) == 1:
         site = sites[0]

@@ -51,6 +51,7 @@ def test_a_user_of_two_sites_chooses_and_is_then_taken_to_the_last_one():
     assert "South works" in text
     client.get(url("worker_add", code="south"))
     assert client.get("/").url == reverse("selection:today", args=["south"])
+    assert "North works" in client.get("/?choose=1").content.decode()
 
 
 def test_a_user_of_no_site_is_told_whom_to_ask():
