@@ -10,6 +10,7 @@ from django.db.models import Q
 from django.urls import reverse
 
 from programme.equipment.models import FilterChange
+from programme.figures import down
 from programme.fit.models import FitTest
 from programme.ledger.models import Entry
 from programme.roster.models import Clearance, SealNote, Site, Training, Worker
@@ -147,11 +148,24 @@ def saying_of(chain: Chain, verdict: CrewVerdict, *, sees_medical: bool) -> Sayi
 class Papers:
     """What is on file of one person, newest first; records that no longer stand come along."""
 
-    clearances: list[Clearance]
+    clearances: list[tuple[Clearance, str]]
     trainings: list[tuple[Training, str]]
     seal_notes: list[SealNote]
     fit_tests: list[FitTest]
     changes: list[FilterChange]
+
+
+def _limits(row: Clearance) -> str:
+    hours = row.max_hours_a_shift
+    said = {
+        "no negative-pressure respirator": row.no_negative_pressure,
+        "no self-contained breathing apparatus": row.no_scba,
+        f"up to {row.get_heaviest_work_display()} work": row.heaviest_work,
+        f"at most {down(hours)} h a shift": hours is not None,
+        "follow-up needed": row.follow_up_needed,
+        "worker has no copy yet": not row.copy_given,
+    }
+    return "; ".join(says for says, holds in said.items() if holds)
 
 
 def _covers(training: Training) -> str:
@@ -162,7 +176,7 @@ def _covers(training: Training) -> str:
 def papers_of(worker: Worker, *, on: date) -> Papers:
     """All papers of the person, dated on or before that day."""
     return Papers(
-        list(worker.clearances.filter(decided_on__lte=on)),
+        [(row, _limits(row)) for row in worker.clearances.filter(decided_on__lte=on)],
         [(row, _covers(row)) for row in worker.trainings.filter(trained_on__lte=on)],
         list(worker.seal_notes.filter(noted_on__lte=on)),
         list(worker.fit_tests.filter(tested_on__lte=on).select_related("size__facepiece")),
