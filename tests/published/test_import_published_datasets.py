@@ -18,7 +18,16 @@ from django.urls import reverse
 
 from exposure.models import Sample
 from programme.records.models import ImportBatch
-from tests.builders import client_for, make_agent, make_site, make_task, make_task_agent, make_user
+from programme.selection.assess import assess
+from tests.builders import (
+    client_for,
+    make_agent,
+    make_limit,
+    make_site,
+    make_task,
+    make_task_agent,
+    make_user,
+)
 
 pytestmark = pytest.mark.django_db
 DATA = Path(__file__).parent / "data" / "datasets"
@@ -76,7 +85,9 @@ def brought_in(published):
     user = make_user("administrator", site)
     client, since = client_for(user), date(published.sampled_on.year, 1, 1)
     task = make_task(site, code="assay", active_from=since)
-    make_task_agent(task, make_agent("Metal", key="NOCAS-METAL"), fraction="total")
+    agent = make_agent("Metal", key="NOCAS-METAL")
+    make_limit(agent, 0.05, fraction="total")
+    make_task_agent(task, agent, fraction="total")
     upload = SimpleUploadedFile(published.file, (DATA / published.file).read_bytes())
     client.post(reverse("records:import_start", args=[site.code, "samples"]), {"file": upload})
     batch = ImportBatch.objects.get()
@@ -111,7 +122,6 @@ def test_every_printed_value_is_stored_with_its_citation(published):
 
 @BOTH
 def test_the_task_shows_the_published_figures(published):
-    assess = pytest.importorskip("programme.selection.assess").assess
     chain = assess(brought_in(published), on=published.sampled_on)
     figures = next(
         working.figures
