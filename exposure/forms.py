@@ -1,10 +1,11 @@
 """What is typed about samples, and the form that asks back and reads a sample from its boxes."""
 
 import hashlib
+from collections.abc import Sequence
 from datetime import date
 from typing import Any
 
-from crispy_forms.layout import Field
+from crispy_forms.layout import Field, Submit
 from django import forms
 from django.http import QueryDict
 
@@ -34,10 +35,10 @@ class KeepingForm(AskingForm):
     is_meant = forms.BooleanField(required=False, label="Keep it as typed")
     asked = forms.CharField(required=False, widget=forms.HiddenInput, max_length=64)
 
-    def set_layout(self, *parts: Any, submit: str) -> None:
+    def set_layout(self, *parts: Any, submit: str, also: Sequence[Submit] = ()) -> None:
         """Lay out the form with what was asked in a hidden box."""
         self._questions: list[tuple[str | None, str]] = []
-        super().set_layout(*parts, Field("asked"), submit=submit)
+        super().set_layout(*parts, Field("asked"), submit=submit, also=also)
 
     def ask(self, field: str | None, question: str) -> None:
         """Note a question; `settle` asks them all at once."""
