@@ -84,7 +84,7 @@ def test_a_broken_link_of_the_chain_leads_to_its_working_by_keyboard(page, signe
     assert page.locator(".verdict").inner_text().startswith("The chain breaks at Limit.")
     page.get_by_role("link", name="Class", exact=True).focus()
     page.keyboard.press("Enter")
-    assert page.locator("#class details.working[open]").count() == 1
+    page.locator("#class details.working[open]").wait_for()
 
 
 def test_a_worker_taken_off_can_be_put_back(page, signed_in):
