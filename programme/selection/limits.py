@@ -92,6 +92,14 @@ def _adjusted(facts: TaskFacts, fact: AgentFact, binding: Binding) -> Binding:
     )
 
 
+def _without_twins(
+    rows: list[tuple[float, ExposureLimit]], unit: str
+) -> list[tuple[float, ExposureLimit]]:
+    """A list prints one limit in ppm and in mg/m3: where the results' unit is there, it is meant."""
+    printed = {row.list_code for _, row in rows if row.unit == unit}
+    return [one for one in rows if one[1].unit == unit or one[1].list_code not in printed]
+
+
 def bindings(facts: TaskFacts, fact: AgentFact) -> dict[str, Binding]:
     """The binding limit of each averaging kind there is one for: "TWA", "STEL", "C"."""
     unit = sample_unit(fact)
@@ -106,7 +114,7 @@ def bindings(facts: TaskFacts, fact: AgentFact) -> dict[str, Binding]:
     found = {}
     for kind, rows in by_kind.items():
         exact = [one for one in rows if one[1].fraction == fact.fraction] or rows
-        value, row = min(exact, key=lambda one: one[0])
+        value, row = min(_without_twins(exact, unit), key=lambda one: one[0])
         tried = tuple(one[1] for one in sorted(rows, key=lambda one: one[0]))
         binding = Binding(kind, row, value, unit, tried=tried)
         found[kind] = _adjusted(facts, fact, binding)

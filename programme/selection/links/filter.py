@@ -156,7 +156,10 @@ class _Candidates:
     def particulate(self) -> None:
         """Resistance, mass, hours and policy of a particulate filter."""
         element, facts = self.element, self.facts
-        if element is None or not element.particulate_class:
+        has_particles = any(
+            one.fact.form != "gas" or one.fact.dust_load_mg_m3 for one in self.agents
+        )
+        if element is None or not element.particulate_class or not has_particles:
             return
         dust, whence = _dust_mg_m3(self.agents)
         flow, flow_whence = _flow_l_min(facts, self.assembly)

@@ -27,16 +27,17 @@ from programme.selection.models import CrewMember, TaskAssembly
 RULES = "us-2026-1"
 PROTOCOL = "modified_cnc_elastomeric"
 SAMPLES_A_TASK = 8
+MOST = 200_000
 A_BATCH = 2000
-FIRST_NAMES = "Ada Bo Cai Dee Eli Fay Gus Hal Ida Jon Kit Lou Mia Ned Oda Pip Rae Sol Tia Una".split()
-LAST_NAMES = "Ashdown Birk Calloway Dunmore Esk Fenwick Garth Holm Iveson Kell Lunde Marsh".split()
+FIRST_NAMES = ("Ada", "Bo", "Cai", "Dee", "Eli", "Fay", "Gus", "Hal", "Ida", "Jon", "Kit", "Lou")
+LAST_NAMES = ("Ashdown", "Birk", "Calloway", "Dunmore", "Esk", "Fenwick", "Garth", "Holm", "Kell")
 LAPSED_SHARE = 0.03
 SIZES = ("S", "M", "L")
 
 
 def _count(text: str) -> int:
-    if not text.isdecimal() or not 1 <= int(text) <= 200_000:
-        raise ArgumentTypeError(f"{text!r} is not allowed; a whole number from 1 to 200000")
+    if not text.isdecimal() or not 1 <= int(text) <= MOST:
+        raise ArgumentTypeError(f"{text!r} is not allowed; a whole number from 1 to {MOST}")
     return int(text)
 
 
@@ -57,8 +58,9 @@ class Command(BaseCommand):
         with transaction.atomic():
             made = _Maker(code, options["workers"], options["tasks"], options["seed"]).make()
         spent = time.perf_counter() - started
-        self.stdout.write(f"{made}: {options['workers']} workers, {options['tasks']} tasks "
-                          f"in {spent:.1f} s.")
+        self.stdout.write(
+            f"{made}: {options['workers']} workers, {options['tasks']} tasks in {spent:.1f} s."
+        )
 
 
 class _Maker:
@@ -142,8 +144,9 @@ class _Maker:
             for number in range(1, self.tasks_wanted + 1)
         )
         self.task_agents = TaskAgent.objects.bulk_create(
-            TaskAgent(task=task, agent=agent, form="particulate", fraction="inhalable",
-                      cake="coarse_dust")
+            TaskAgent(
+                task=task, agent=agent, form="particulate", fraction="inhalable", cake="coarse_dust"
+            )
             for task in self.made_tasks
         )
         TaskAssembly.objects.bulk_create(

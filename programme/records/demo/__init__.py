@@ -1,0 +1,1 @@
+"""The demo: an invented foundry and fabrication yard, loaded once from `fixtures/demo`."""
