@@ -2,7 +2,6 @@
 
 import csv
 import json
-import math
 import sys
 from argparse import ArgumentTypeError
 from datetime import date
@@ -12,6 +11,7 @@ from django.core.management.base import BaseCommand, CommandError, CommandParser
 
 from exposure.models import Task
 from programme.export import defused
+from programme.records.api import strict
 from programme.roster.models import Site
 from programme.selection.assess import assess_site
 from programme.selection.chain import Chain
@@ -25,17 +25,6 @@ def _day(text: str) -> date:
         return date.fromisoformat(text)
     except ValueError:
         raise ArgumentTypeError(f"{text!r} is not a date; write it like 2026-03-02") from None
-
-
-def strict(value: Any) -> Any:
-    """The value with NaN and infinities as null, which JSON does not know."""
-    if isinstance(value, dict):
-        return {str(key): strict(one) for key, one in value.items()}
-    if isinstance(value, list | tuple):
-        return [strict(one) for one in value]
-    if isinstance(value, float) and not math.isfinite(value):
-        return None
-    return value.isoformat() if isinstance(value, date) else value
 
 
 class Command(BaseCommand):
