@@ -8,7 +8,7 @@ from functools import cached_property
 
 import numpy as np
 
-from exposure.statistics.decisions import describe
+from exposure.statistics.decisions import GroupFigures, describe
 from exposure.statistics.pack import pack
 from exposure.units import site_molar_volume_l_mol
 from programme.roster.months import months_before
@@ -97,6 +97,29 @@ def _usable(facts: TaskFacts, fact: AgentFact, unit: str) -> tuple[list, Counter
     return usable, left_out
 
 
+def _estimate(one: AgentEstimates, kind: str, figures: GroupFigures, index: int) -> Estimate:
+    days = [s.sampled_on for s in one.fact.samples if s.span in SPANS[kind]]
+    return Estimate(
+        kind=kind,
+        binding=one.bindings[kind],
+        unit=one.unit,
+        n=int(figures.n[index]),
+        n_censored=int(figures.n_censored[index]),
+        gm=float(figures.gm[index]),
+        gsd=float(figures.gsd[index]),
+        x95=float(figures.x95[index]),
+        x95_upper70=float(figures.x95_upper70[index]),
+        x95_upper95=float(figures.x95_upper95[index]),
+        highest=float(figures.highest[index]),
+        governing=float(figures.governing[index]),
+        ratio=float(figures.ratio[index]),
+        ratio95=float(figures.ratio95[index]),
+        basis=str(figures.basis[index]),
+        flags=figures.flags[index],
+        newest=max(days, default=None),
+    )
+
+
 def estimates(tasks: list[TaskFacts]) -> dict[int, AgentEstimates]:
     """Estimates by task-agent id, for all tasks in one statistical batch."""
     found: dict[int, AgentEstimates] = {}
@@ -130,29 +153,5 @@ def estimates(tasks: list[TaskFacts]) -> dict[int, AgentEstimates]:
     limit = np.array([one.bindings[kind].value for one, kind in groups])
     figures = describe(batch, limit, policy=tasks[0].site.statistic)
     for index, (one, kind) in enumerate(groups):
-        days = [s.sampled_on for s in one.fact.samples if s.span in SPANS[kind]]
-        one.estimates[kind] = Estimate(
-            kind,
-            one.bindings[kind],
-            one.unit,
-            int(figures.n[index]),
-            int(figures.n_censored[index]),
-            *(
-                float(getattr(figures, name)[index])
-                for name in (
-                    "gm",
-                    "gsd",
-                    "x95",
-                    "x95_upper70",
-                    "x95_upper95",
-                    "highest",
-                    "governing",
-                    "ratio",
-                    "ratio95",
-                )
-            ),
-            str(figures.basis[index]),
-            figures.flags[index],
-            max(days, default=None),
-        )
+        one.estimates[kind] = _estimate(one, kind, figures, index)
     return found

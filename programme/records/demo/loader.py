@@ -179,7 +179,7 @@ class _SiteLoader:
                 changed_on=self.ago(changed) if changed else None,
                 active_from=self.since,
             )
-            self.tasks[task.code] = save_task(task, by=self.by) or task
+            self.tasks[task.code] = save_task(task, by=self.by)
             for agent in row["agents"]:
                 samples += self._agent(task, agent, row["crew"])
             assign(task, self.assemblies[row["assembly"]], since=self.since, by=self.by)
@@ -196,7 +196,7 @@ class _SiteLoader:
             dust_load_mg_m3=row.get("dust_load"),
             cake=row.get("cake", ""),
         )
-        of = save_task_agent(of, by=self.by) or of
+        of = save_task_agent(of, by=self.by)
         below = row.get("below", [])
         count = row.get("n", 0)
         # Quantiles, not draws: the same spread on every machine, and no result of mere chance.
@@ -237,7 +237,9 @@ class _SiteLoader:
         )
 
     def papers(self) -> None:
-        clearances, trainings, notes = [], [], []
+        clearances: list[Clearance] = []
+        trainings: list[Training] = []
+        notes: list[SealNote] = []
         for number, worker in self.workers.items():
             cleared = self.of_person(number, "clearance", "able")
             if cleared != "none":
@@ -270,10 +272,14 @@ class _SiteLoader:
                 notes.append(
                     SealNote(worker=worker, noted_on=self.ago(changed), kind="face_change")
                 )
-        acts = []
-        for rows, act in ((clearances, "clearance"), (trainings, "training"), (notes, "seal note")):
-            for row in type(rows[0]).objects.bulk_create(rows) if rows else []:
-                acts.append(ledger.Act(f"{act} recorded", row, says=f"{act}: {row.worker.name}"))
+        made: list[tuple[str, Clearance | Training | SealNote]] = []
+        made += [("clearance", row) for row in Clearance.objects.bulk_create(clearances)]
+        made += [("training", row) for row in Training.objects.bulk_create(trainings)]
+        made += [("seal note", row) for row in SealNote.objects.bulk_create(notes)]
+        acts = [
+            ledger.Act(f"{what} recorded", row, says=f"{what}: {row.worker.name}")
+            for what, row in made
+        ]
         ledger.enter_many(acts, chain=self.site.code, by=self.by.username)
 
     def fit_tests(self) -> None:
