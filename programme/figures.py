@@ -21,7 +21,7 @@ def rounded(value: float | None, *, toward: str = "near", digits: int = 3) -> st
         digits: significant digits kept, 1 or more.
 
     Returns:
-        Plain decimal text with a thin space between thousands, without an exponent.
+        Plain decimal text with a narrow no-break space between thousands, without an exponent.
 
     Raises:
         ValueError: `toward` is none of the three.
@@ -39,7 +39,7 @@ def rounded(value: float | None, *, toward: str = "near", digits: int = 3) -> st
     if exact == exact.to_integral_value() and abs(exact) < 1_000_000:
         step = Decimal(1)
     shown = exact.quantize(step, rounding=_ROUNDINGS[toward])
-    text = f"{shown:,f}".replace(",", "\u2009")
+    text = f"{shown:,f}".replace(",", "\u202f")
     if "." in text:
         text = text.rstrip("0").rstrip(".")
     return text

@@ -25,4 +25,16 @@ window.addEventListener("DOMContentLoaded", () => {
 window.addEventListener("pageshow", () => {
   for (const button of document.querySelectorAll("button:disabled")) button.disabled = false;
 });
-/* Print with all workings as they stand on screen. */
+/* On paper nothing can be unfolded, so every working is printed open. */
+window.addEventListener("beforeprint", () => {
+  for (const details of document.querySelectorAll("details:not([open])")) {
+    details.open = true;
+    details.dataset.folded = "";
+  }
+});
+window.addEventListener("afterprint", () => {
+  for (const details of document.querySelectorAll("details[data-folded]")) {
+    details.open = false;
+    delete details.dataset.folded;
+  }
+});

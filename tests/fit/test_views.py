@@ -144,7 +144,7 @@ def test_a_full_facepiece_in_great_britain_takes_no_qualitative_test():
     query = f"?worker={make_worker(site).pk}&size={size.pk}"
     text = client.get(address + query).content.decode()
     assert "taste_aerosol" not in text
-    assert "2\u2009000" in text or "2000" in text
+    assert "2\u202f000" in text or "2000" in text
     assert "in every exercise" in text
     assert "unconfirmed" in text
 
