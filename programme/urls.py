@@ -8,6 +8,7 @@ urlpatterns = [
     path("", roster_views.start, name="start"),
     path("accounts/", include("allauth.urls")),
     path("s/<slug:code>/", include("programme.selection.urls")),
+    path("s/<slug:code>/site/", include("programme.roster.site_urls")),
     path("s/<slug:code>/people/", include("programme.roster.urls")),
     path("s/<slug:code>/samples/", include("exposure.urls")),
     path("s/<slug:code>/fit-tests/", include("programme.fit.urls")),

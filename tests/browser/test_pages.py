@@ -27,7 +27,11 @@ PAGES = (
     "respirators/{assembly}/",
     "respirators/new/",
     "respirators/classes/",
+    "site/",
+    "site/settings/",
+    "site/members/",
     "records/",
+    "records/ledger/",
     "records/import/",
     "records/import/samples/new/",
 )
