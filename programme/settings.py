@@ -148,6 +148,11 @@ ACCOUNT_LOGOUT_REDIRECT_URL = "account_login"
 ACCOUNT_SESSION_REMEMBER = False
 MFA_SUPPORTED_TYPES = ["totp", "recovery_codes"]
 
+ACCOUNT_PREVENT_ENUMERATION = True
+# Nothing is mailed unless a mail server is named.
+EMAIL_HOST = os.environ.get("HALEWARD_MAIL_HOST", "")
+EMAIL_BACKEND = f"django.core.mail.backends.{'smtp' if EMAIL_HOST else 'dummy'}.EmailBackend"
+
 SESSION_COOKIE_AGE = 12 * 3600
 SESSION_EXPIRE_AT_BROWSER_CLOSE = True
 SESSION_COOKIE_HTTPONLY = True

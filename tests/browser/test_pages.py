@@ -106,3 +106,11 @@ def test_every_page_works_with_scripts_off(chromium, live_server, sign_in):
     page.goto(address(scene, "tasks/{task}/"))
     assert page.locator("ol.links li").count() == 6
     context.close()
+
+
+@pytest.mark.parametrize("where", ["/accounts/password/change/", "/accounts/2fa/"])
+def test_a_page_of_the_own_account_has_one_heading_and_no_barrier(page, signed_in, where):
+    assert signed_in
+    page.goto(where)
+    assert page.locator("h1").count() == 1
+    assert violations(page) == []

@@ -16,7 +16,15 @@ CAUTION = (
 UNCONFIRMED = " (unconfirmed)"
 MARGIN_MM = 16
 # Signs that the embedded font lacks, with what says the same.
-SPARE = {"\u2009": "\u00a0", "\u202f": "\u00a0", "≥": "at least", "≤": "at most", "●": "*", "○": "-", "−": "-"}
+SPARE = {
+    "\u2009": "\u00a0",
+    "\u202f": "\u00a0",
+    "≥": "at least",
+    "≤": "at most",
+    "●": "*",
+    "○": "-",
+    "−": "-",
+}
 
 
 @cache
