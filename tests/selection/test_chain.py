@@ -391,3 +391,65 @@ def test_a_worker_of_whom_nothing_is_known_does_not_hide_who_may_start():
     assert chain.first_break.name == "Face"
     assert chain.may_start == 1
     assert chain.links[4].figure == "1 of 2"
+
+
+def vapour_scene(boiling_point_c):
+    scene = whole()
+    scene.agent.kind, scene.agent.us_filter_need = "vapour", "OV"
+    scene.agent.boiling_point_c = boiling_point_c
+    scene.agent.save()
+    scene.task_agent.form = "gas"
+    scene.task_agent.save()
+    scene.element.gas_elements = ["OV"]
+    scene.element.cartridge_life_h, scene.element.cartridge_life_source = 9, "invented test"
+    scene.element.save()
+    return scene
+
+
+@pytest.mark.parametrize(("boils_at", "is_found"), [(56, True), (65, True), (110, False)])
+def test_a_vapour_that_boils_low_passes_an_ordinary_cartridge_too_soon(boils_at, is_found):
+    """EN 14387 sets type AX apart at 65 degrees Celsius (verified)."""
+    assert ("gas-low-boiling" in codes(vapour_scene(boils_at))) is is_found
+
+
+def test_ammonia_is_not_answered_by_an_organic_vapour_cartridge():
+    scene = vapour_scene(110)
+    scene.agent.us_filter_need = "AM"
+    scene.agent.save()
+    assert "gas-type" in codes(scene)
+
+
+def test_a_cartridge_without_objective_data_has_no_schedule():
+    scene = vapour_scene(110)
+    scene.element.cartridge_life_source = ""
+    scene.element.save()
+    assert "change-schedule" in codes(scene)
+    assert judged(scene).may_start == 0
+
+
+@pytest.mark.parametrize(
+    ("note", "severity"),
+    [("IARC group 3", "plan"), ("IARC group 1", "fix"), ("", "plan")],
+    ids=["not classifiable", "carcinogen", "none"],
+)
+def test_in_doubt_a_carcinogen_gets_the_higher_class(note, severity):
+    scene = whole()
+    scene.agent.carcinogen_note = note
+    scene.agent.save()
+    scene.limit.value = 0.0185
+    scene.limit.save()
+    found = [m for m in judged(scene).mismatches if m.code == "class-uncertain"]
+    assert [one.severity for one in found] == [severity]
+
+
+def test_counted_shifts_go_on_from_the_day_they_were_recorded():
+    scene = whole()
+    interval = judged(scene).links[5].workings[0].figures["shifts"]
+    change = scene.worker.filter_changes.get()
+    change.shifts_used = interval - 1
+    change.save()
+    recorded = scene.site.today(change.recorded_at)
+    scene.worker.fit_tests.update(tested_on=recorded)
+    scene.worker.trainings.update(trained_on=recorded)
+    assert "filter-due" not in codes(scene, recorded)
+    assert "filter-due" in codes(scene, recorded + timedelta(days=3))

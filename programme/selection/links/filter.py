@@ -96,7 +96,8 @@ def _dated(facts: TaskFacts, member: CrewFact, one: ElementSchedule, interval: i
     fitted = local_day(last.fitted_at, facts.site)
     a_day = facts.task.shifts_per_week / DAYS_A_WEEK
     if last.shifts_used is not None:
-        counted_on = facts.on
+        # The count was true on the day it was recorded; shifts go on from there.
+        counted_on = local_day(last.recorded_at, facts.site)
         due = counted_on + timedelta(days=math.floor((interval - last.shifts_used) / a_day))
     else:
         due = fitted + timedelta(days=math.floor(interval / a_day))

@@ -6,7 +6,7 @@ from dataclasses import dataclass
 
 from exposure.units import site_molar_volume_l_mol
 from programme.equipment.models import Assembly
-from programme.figures import down, unit_sign, up
+from programme.figures import down, near, unit_sign, up
 from programme.rulepack.pack import RulePack
 from programme.rulepack.rows import RespiratorClass
 from programme.selection.chain import (
@@ -55,6 +55,14 @@ def wearable(assembly: Assembly, pack: RulePack, *, is_particulate_only: bool) -
 def is_particulate_only(agents: Iterable[AgentEstimates]) -> bool:
     """Whether no agent of the task is a gas or vapour."""
     return all(one.fact.form == "particulate" for one in agents)
+
+
+def is_carcinogen(note: str) -> bool:
+    """Whether a note on cancer names a group that calls for the higher class in doubt.
+
+    IARC group 3 says "not classifiable" and does not.
+    """
+    return bool(note.strip().replace("IARC group 3", "").strip(" ;,."))
 
 
 class _Judge:
@@ -169,7 +177,7 @@ class _Judge:
                 f"confidence, but not {up(asked.ratio95)} times at 95 %."
             )
             sample = Remedy("Record more samples", "exposure:sample_add")
-            if any(one.fact.agent.carcinogen_note for one in self.agents):
+            if any(is_carcinogen(one.fact.agent.carcinogen_note) for one in self.agents):
                 self.fix(
                     "class-uncertain",
                     says,
@@ -264,6 +272,7 @@ class _Judge:
         elif not pack.covers_gas(have, needs=needs, cas=agent.cas):
             says = f"{'+'.join(have)} does not cover {agent.name}, which needs {text}."
             self.stop("gas-type", says)
+        self.low_boiling(one, have)
         bar = pack.not_for(agent.cas, have)
         if bar and pack.supplied_air_need not in needs and not bar.allowed_with_schedule:
             self.stop(
@@ -273,6 +282,18 @@ class _Judge:
                 sure=bar.sure,
             )
         self.ceiling(one, have)
+
+    def low_boiling(self, one: AgentEstimates, have: tuple[str, ...]) -> None:
+        """Vapours of low boiling point pass an ordinary organic-vapour element early."""
+        agent, rule = one.fact.agent, self.pack.low_boiling
+        point = agent.boiling_point_c
+        only_ordinary = set(have) <= set(rule.ordinary_elements)
+        if only_ordinary and point is not None and point <= rule.boiling_point_c:
+            says = (
+                f"{agent.name} boils at {near(point)} °C, {near(rule.boiling_point_c)} °C or less: "
+                f"{'+'.join(have)} holds it too briefly."
+            )
+            self.stop("gas-low-boiling", says, source=rule.source, sure=rule.sure)
 
     def _made_for(self, cas: str, have: tuple[str, ...]) -> bool:
         rows = [row for row in self.pack.gas_elements if row.id in have]
