@@ -2,18 +2,22 @@
 
 import math
 from collections.abc import Callable
+from dataclasses import dataclass
 from datetime import date
 from functools import wraps
-from typing import Any
+from typing import Any, cast
 
 from django.contrib.auth.decorators import login_not_required
+from django.contrib.auth.models import User
 from django.http import HttpRequest, JsonResponse
 from django.urls import reverse
 
 from exposure.models import Task
 from programme.roster.access import day_asked
 from programme.roster.models import Site
+from programme.roster.permissions import role_at
 from programme.selection.assess import assess, assess_site
+from programme.selection.views import seen_by
 
 
 def strict(value: Any) -> Any:
@@ -50,6 +54,15 @@ def _endpoint(view: Callable[..., JsonResponse]) -> Callable[..., JsonResponse]:
     return answer
 
 
+@dataclass(frozen=True)
+class _Asked:
+    """The user's own site, the day, and the role in which it is asked."""
+
+    site: Site
+    on: date
+    role: str
+
+
 def _of_site(view: Callable[..., JsonResponse]) -> Callable[..., JsonResponse]:
     """The view gets the user's own site and the day; another site is not found."""
 
@@ -61,7 +74,7 @@ def _of_site(view: Callable[..., JsonResponse]) -> Callable[..., JsonResponse]:
         on, text, fault = day_asked(request, site.today())
         if fault:
             return _refusal("on", text, "a day like 2026-03-02", status=400)
-        return view(site, on, **rest)
+        return view(_Asked(site, on, str(role_at(cast(User, request.user), site))), **rest)
 
     return _endpoint(answer)
 
@@ -89,26 +102,27 @@ def sites(request: HttpRequest) -> JsonResponse:
 
 
 @_of_site
-def chains(site: Site, on: date) -> JsonResponse:
+def chains(asked: _Asked) -> JsonResponse:
     """The chains of all active tasks."""
-    return _answer([chain.as_dict() for chain in assess_site(site, on=on)])
+    found = seen_by(asked.role, assess_site(asked.site, on=asked.on))
+    return _answer([chain.as_dict() for chain in found])
 
 
 @_of_site
-def chain(site: Site, on: date, task: str) -> JsonResponse:
+def chain(asked: _Asked, task: str) -> JsonResponse:
     """The chain of one task."""
-    found = Task.objects.at(site).filter(code=task).select_related("site").first()
+    found = Task.objects.at(asked.site).filter(code=task).select_related("site").first()
     if found is None:
-        return _refusal("task", task, f"a task of {site}", status=404)
-    return _answer(assess(found, on=on).as_dict())
+        return _refusal("task", task, f"a task of {asked.site}", status=404)
+    return _answer(seen_by(asked.role, [assess(found, on=asked.on)])[0].as_dict())
 
 
 @_of_site
-def mismatches(site: Site, on: date) -> JsonResponse:
+def mismatches(asked: _Asked) -> JsonResponse:
     """Every mismatch of every active task."""
     rows = [
         {"task": one.task_code, **found}
-        for one in assess_site(site, on=on)
+        for one in seen_by(asked.role, assess_site(asked.site, on=asked.on))
         for link in one.as_dict()["links"]
         for found in link["mismatches"]
     ]

@@ -1,7 +1,7 @@
 """The protection chain as an object: what `assess` returns and everything else only prints."""
 
 from collections.abc import Iterable
-from dataclasses import asdict, dataclass, field
+from dataclasses import asdict, dataclass, field, replace
 from datetime import date
 from typing import Any
 
@@ -239,6 +239,31 @@ class Chain:
             may_start=self.may_start,
         )
         return plain
+
+
+MEDICAL = "medical-"
+ASK = "ask the programme administrator"
+
+
+def _veiled(one: Mismatch) -> Mismatch:
+    if not one.code.startswith(MEDICAL):
+        return one
+    return replace(
+        one, code="medical", says=f"{one.worker}: {ASK}.", remedies=(), source="", sure=""
+    )
+
+
+def veiled(chain: Chain) -> Chain:
+    """The same chain for a reader who may not see why a clearance stands in the way."""
+    return replace(
+        chain,
+        links=tuple(
+            replace(link, mismatches=tuple(map(_veiled, link.mismatches))) for link in chain.links
+        ),
+        crew=tuple(
+            replace(one, mismatches=tuple(map(_veiled, one.mismatches))) for one in chain.crew
+        ),
+    )
 
 
 def state_of(mismatches: Iterable[Mismatch], *, is_due_soon: bool = False) -> str:

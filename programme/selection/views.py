@@ -11,9 +11,10 @@ from exposure.models import Task
 from programme.export import csv_response
 from programme.roster.access import SiteRequest, site_page
 from programme.roster.asking import Head, in_order, page_asked, sort_asked, text_asked
+from programme.roster.permissions import may
 from programme.selection.agenda import against, agenda, lapses
 from programme.selection.assess import assess, assess_site
-from programme.selection.chain import LINKS, Chain
+from programme.selection.chain import LINKS, Chain, veiled
 from programme.selection.pictures import pictures_of
 
 STATES = {"holds": "holds", "due soon": "due soon", "broken": "broken"}
@@ -39,6 +40,11 @@ HEADER = (
 )
 
 
+def seen_by(role: str, chains: list[Chain]) -> list[Chain]:
+    """The chains as this role may see them: medical reasons only for whom they concern."""
+    return chains if may(role, "see clearance limits") else [veiled(chain) for chain in chains]
+
+
 def task_of(request: SiteRequest, pk: int) -> Task:
     rows = Task.objects.for_user(request.user).at(request.site).select_related("site")
     return get_object_or_404(rows, pk=pk)
@@ -47,7 +53,7 @@ def task_of(request: SiteRequest, pk: int) -> Task:
 @site_page()
 @require_GET
 def today(request: SiteRequest) -> HttpResponse:
-    chains = assess_site(request.site, on=request.on)
+    chains = seen_by(request.role, assess_site(request.site, on=request.on))
     days = request.site.due_soon_days
     if request.GET.get("format") == "csv":
         return _today_csv(request, chains, days)
@@ -101,7 +107,7 @@ def _matches(chain: Chain, asked: dict[str, str]) -> bool:
 @require_GET
 def tasks(request: SiteRequest) -> HttpResponse:
     asked = _asked(request)
-    every = assess_site(request.site, on=request.on)
+    every = seen_by(request.role, assess_site(request.site, on=request.on))
     chains = [chain for chain in every if _matches(chain, asked)]
     sort = sort_asked(request, SORTS, "break")
     chains = in_order(chains, sort, SORTS)
@@ -149,7 +155,7 @@ def task(request: SiteRequest, pk: int) -> HttpResponse:
     note = _outside(one, request.on)
     context: dict[str, Any] = {"task": one, "note": note}
     if not note:
-        chain = assess(one, on=request.on)
+        chain = seen_by(request.role, [assess(one, on=request.on)])[0]
         context |= {"chain": chain, "pictures": pictures_of(one, on=request.on)}
     return render(request, "selection/task.html", context)
 

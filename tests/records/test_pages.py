@@ -99,3 +99,19 @@ def test_the_api_lists_its_addresses(scene):
     answer = client(scene).get("/api/")
     assert answer.json()["sites"] == "/api/sites/"
     assert client(scene).get("/api/sites/").json()[0]["code"] == scene.site.code
+
+
+@pytest.mark.parametrize("where", ["today/", "tasks/", "tasks/{task}/", "today/?format=csv"])
+def test_a_manager_never_reads_a_medical_reason(scene, where):
+    scene.worker.clearances.update(outcome="not_able")
+    where = where.format(task=scene.task.pk)
+    address = f"/s/{scene.site.code}/{where}{'&' if '?' in where else '?'}on=2026-03-02"
+    assert "not cleared" not in client(scene).get(address).content.decode()
+    assert "not cleared" in client(scene, "coordinator").get(address).content.decode()
+
+
+def test_the_api_veils_a_medical_reason_as_the_pages_do(scene):
+    scene.worker.clearances.update(outcome="not_able")
+    address = f"/api/sites/{scene.site.code}/chains/?on=2026-03-02"
+    assert "not cleared" not in client(scene).get(address).content.decode()
+    assert "not cleared" in client(scene, "coordinator").get(address).content.decode()
