@@ -8,7 +8,8 @@ import numpy as np
 import yaml
 from django.conf import settings
 from django.contrib.auth.models import User
-from django.db import transaction
+from django.db import connection, transaction
+from django.db.models import QuerySet
 from scipy.special import ndtri
 
 from exposure.actions import record_samples, save_task, save_task_agent
@@ -23,6 +24,7 @@ from programme.equipment.models import (
 from programme.fit.actions import Entered, drafted, record_fit_tests
 from programme.fit.outcome import slots_of
 from programme.ledger import actions as ledger
+from programme.ledger.models import Entry
 from programme.roster.actions import add_workers
 from programme.roster.models import Clearance, Membership, SealNote, Site, Training, Worker
 from programme.rulepack.load import load
@@ -31,6 +33,9 @@ from programme.selection.actions import assign, put_on_crew
 SCENARIO = settings.FIXTURES_DIR / "demo" / "tarnbeck.yaml"
 SIZES = ("S", "M", "M", "M", "L")
 PROTOCOLS = {"us-2026-1": "modified_cnc_elastomeric", "gb-2026-1": "ambient_aerosol_cnc"}
+# Who stands in the ledger as the maker of an invented site.
+MAKER, TRIAL_MAKER = "demo", "trial"
+INVENTED = "invented site made"
 YEARS_BACK = 2
 TRAINED_DAYS_AGO, FITTED_DAYS_AGO, SECOND_TEST_DAYS_AGO = 90, 80, 440
 FILTER_DAYS_AGO = 1
@@ -45,8 +50,24 @@ def read() -> dict[str, Any]:
 
 
 def is_loaded() -> bool:
-    """Whether the scenario's first site is there already."""
-    return Site.objects.filter(code=read()["sites"][0]["code"]).exists()
+    """Whether the scenario's first site is there already, made by this loader."""
+    code = read()["sites"][0]["code"]
+    return _invented().filter(chain=code, by=MAKER).exists()
+
+
+def real_sites() -> list[str]:
+    """Codes of the sites that neither the demo nor `make_site` made; none before the tables are."""
+    if Site._meta.db_table not in connection.introspection.table_names():
+        return []
+    invented = set(_invented().values_list("chain", flat=True))
+    codes = Site.objects.order_by("code").values_list("code", flat=True)
+    return [code for code in codes if code not in invented]
+
+
+def _invented() -> QuerySet[Entry]:
+    # A site's name proves nothing: a real one may be called the same. Its first row in the ledger
+    # does, and only the two makers of invented sites write this act.
+    return Entry.objects.filter(serial=1, act=INVENTED)
 
 
 @transaction.atomic
@@ -98,7 +119,7 @@ class _SiteLoader:
     def load(self) -> None:
         """Shelf, tasks, samples, people, papers, fit tests, crews and filters."""
         says = f"{self.site} under {self.site.rule_pack}"
-        ledger.enter("site made", chain=self.site.code, of=self.site, by="demo", says=says)
+        ledger.enter(INVENTED, chain=self.site.code, of=self.site, by=MAKER, says=says)
         self.shelf()
         self.make_workers()
         self.make_tasks()

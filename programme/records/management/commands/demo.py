@@ -2,6 +2,7 @@
 
 import os
 import shutil
+import socket
 import sys
 from argparse import ArgumentTypeError
 from pathlib import Path
@@ -12,7 +13,7 @@ from django.core.management import call_command
 from django.core.management.base import BaseCommand, CommandError, CommandParser
 from django.db import connection
 
-from programme.records.demo.loader import is_loaded, load_demo, read
+from programme.records.demo.loader import is_loaded, load_demo, read, real_sites
 
 LOW_PORT, HIGH_PORT = 1024, 65535
 
@@ -36,9 +37,11 @@ class Command(BaseCommand):
             raise CommandError(
                 "HALEWARD_PLAIN_HTTP: not set; the demo is served without TLS: set 1"
             )
+        self._check_free(options)
+        settings.VAR_DIR.mkdir(parents=True, exist_ok=True)
+        self._refuse_real(is_reset=options["reset"])
         if options["reset"]:
             self._forget()
-        settings.VAR_DIR.mkdir(parents=True, exist_ok=True)
         call_command("migrate", verbosity=0)
         call_command("createcachetable", verbosity=0)
         if not is_loaded():
@@ -49,6 +52,29 @@ class Command(BaseCommand):
         self._say(options["port"])
         if not options["no_serve"]:
             self._serve(options["port"])
+
+    def _check_free(self, options: dict[str, Any]) -> None:
+        if options["no_serve"]:
+            return
+        with socket.socket() as one:
+            one.setsockopt(socket.SOL_SOCKET, socket.SO_REUSEADDR, 1)
+            try:
+                one.bind(("127.0.0.1", options["port"]))
+            except OSError:
+                raise CommandError(
+                    f"--port: {options['port']} is in use; choose another, "
+                    f"{LOW_PORT} to {HIGH_PORT}"
+                ) from None
+
+    def _refuse_real(self, *, is_reset: bool) -> None:
+        """Printed passwords never enter a real site's database, and none is ever removed."""
+        real = real_sites()
+        if real and (is_reset or not is_loaded()):
+            does = "removes only a demo's database" if is_reset else "loads printed passwords"
+            raise CommandError(
+                f"database: it holds {', '.join(real)}, which this command did not make; it {does}. "
+                "Choose an empty folder with HALEWARD_VAR, or another DATABASE_URL"
+            )
 
     def _forget(self) -> None:
         if connection.vendor != "sqlite":

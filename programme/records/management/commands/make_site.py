@@ -8,6 +8,7 @@ from typing import Any
 from zoneinfo import ZoneInfo
 
 import numpy as np
+from django.core.exceptions import ValidationError
 from django.core.management.base import BaseCommand, CommandError, CommandParser
 from django.db import transaction
 
@@ -20,6 +21,8 @@ from programme.equipment.models import (
     FilterChange,
 )
 from programme.fit.models import FitExercise, FitTest
+from programme.ledger import actions as ledger
+from programme.records.demo.loader import INVENTED, TRIAL_MAKER
 from programme.roster.models import Clearance, Site, Training, Worker
 from programme.rulepack.load import load
 from programme.selection.models import CrewMember, TaskAssembly
@@ -35,6 +38,12 @@ LAPSED_SHARE = 0.03
 SIZES = ("S", "M", "L")
 
 
+def _seed(text: str) -> int:
+    if not text.isdecimal():
+        raise ArgumentTypeError(f"{text!r} is not allowed; a whole number from 0")
+    return int(text)
+
+
 def _count(text: str) -> int:
     if not text.isdecimal() or not 1 <= int(text) <= MOST:
         raise ArgumentTypeError(f"{text!r} is not allowed; a whole number from 1 to {MOST}")
@@ -48,15 +57,20 @@ class Command(BaseCommand):
         parser.add_argument("code", help="short name of the new site")
         parser.add_argument("--workers", type=_count, default=200)
         parser.add_argument("--tasks", type=_count, default=20)
-        parser.add_argument("--seed", type=int, default=1)
+        parser.add_argument("--seed", type=_seed, default=1)
 
     def handle(self, *args: Any, **options: Any) -> None:  # noqa: ARG002  Django's signature
         code = options["code"]
         if Site.objects.filter(code=code).exists():
             raise CommandError(f"code: {code!r} is taken; choose another")
+        site = Site(code=code, name=f"Trial site {code}", rule_pack=RULES)
+        try:
+            site.full_clean()
+        except ValidationError as fault:
+            raise CommandError(f"code: {code!r}; " + "; ".join(fault.messages)) from None
         started = time.perf_counter()
         with transaction.atomic():
-            made = _Maker(code, options["workers"], options["tasks"], options["seed"]).make()
+            made = _Maker(site, options).make()
         spent = time.perf_counter() - started
         self.stdout.write(
             f"{made}: {options['workers']} workers, {options['tasks']} tasks in {spent:.1f} s."
@@ -66,11 +80,14 @@ class Command(BaseCommand):
 class _Maker:
     """Fills one site, table by table."""
 
-    def __init__(self, code: str, workers: int, tasks: int, seed: int) -> None:
-        self.rng = np.random.default_rng(seed)
-        self.workers_wanted, self.tasks_wanted = workers, tasks
+    def __init__(self, site: Site, options: dict[str, Any]) -> None:
+        self.rng = np.random.default_rng(options["seed"])
+        self.workers_wanted, self.tasks_wanted = options["workers"], options["tasks"]
         self.pack = load(RULES)
-        self.site = Site.objects.create(code=code, name=f"Trial site {code}", rule_pack=RULES)
+        site.save()
+        self.site = site
+        says = f"{site} with {self.workers_wanted} workers and {self.tasks_wanted} tasks, invented"
+        ledger.enter(INVENTED, chain=site.code, of=site, by=TRIAL_MAKER, says=says)
         self.today = self.site.today()
         self.since = date(self.today.year - 3, 1, 1)
 
