@@ -28,7 +28,7 @@ def _day(text: str) -> date:
 
 
 class Command(BaseCommand):
-    help = "Prints the protection chains of a site; exit status 1 when a link is broken."
+    help = "Prints protection chains; status 1 when a link is broken or nothing was judged."
 
     def add_arguments(self, parser: CommandParser) -> None:
         parser.add_argument("site", help="code of the site")
@@ -43,17 +43,21 @@ class Command(BaseCommand):
             says = f"site: {options['site']!r} is not known; known are {known}"
             raise CommandError(says, returncode=WRONG_ARGUMENT)
         on = options["on"] or site.today()
-        chains = assess_site(site, on=on, tasks=self._tasks(site, options["task"]))
+        chains = assess_site(site, on=on, tasks=self._tasks(site, options["task"], on))
         getattr(self, f"_{options['format']}")(chains)
-        if not all(chain.holds for chain in chains):
+        # Nothing judged is not "all hold".
+        if not chains or not all(chain.holds for chain in chains):
             sys.exit(BROKEN_STATUS)
 
-    def _tasks(self, site: Site, code: str | None) -> list[Task] | None:
+    def _tasks(self, site: Site, code: str | None, on: date) -> list[Task] | None:
         if code is None:
             return None
         tasks = list(Task.objects.at(site).filter(code=code))
         if not tasks:
             says = f"--task: {code!r} is not a task of {site}; list them with --format csv"
+            raise CommandError(says, returncode=WRONG_ARGUMENT)
+        if not Task.objects.at(site).active(on).filter(code=code).exists():
+            says = f"--on: {on} is not a day on which {code!r} is done; choose one while it is"
             raise CommandError(says, returncode=WRONG_ARGUMENT)
         return tasks
 
