@@ -2,7 +2,7 @@
 
 import math
 from collections import Counter
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from datetime import date
 from functools import cached_property
 
@@ -11,10 +11,11 @@ import numpy as np
 from exposure.statistics.decisions import GroupFigures, describe
 from exposure.statistics.pack import pack
 from exposure.units import site_molar_volume_l_mol
-from programme.roster.months import months_before
+from programme.roster.months import months_after
 from programme.selection.facts import AgentFact, SampleFact, TaskFacts
 from programme.selection.limits import Binding, bindings, in_unit
 
+CANNOT = "which cannot be converted"
 SPANS = {"TWA": ("full", "partial"), "STEL": ("short",), "C": ("ceiling", "short")}
 
 
@@ -59,12 +60,19 @@ class AgentEstimates:
     left_out: Counter[str]
     unit: str
     values: dict[str, list[tuple[float, bool]]]
+    days: dict[str, list[date]] = field(default_factory=dict)
 
     @cached_property
     def governing(self) -> Estimate | None:
-        """The group with the largest hazard ratio; None where no group has one."""
-        known = [one for one in self.estimates.values() if one.is_known]
-        return max(known, key=lambda one: one.ratio) if known else None
+        """The group with the largest hazard ratio.
+
+        None where the shift's average has none, or a group with results allows no estimate: the
+        ratio that is known may be the smaller one.
+        """
+        needed = [one for kind, one in self.estimates.items() if one.n or kind == "TWA"]
+        if not needed or not all(one.is_known for one in needed):
+            return None
+        return max(needed, key=lambda one: one.ratio)
 
 
 def _why_left_out(sample: SampleFact, facts: TaskFacts) -> str:
@@ -74,7 +82,7 @@ def _why_left_out(sample: SampleFact, facts: TaskFacts) -> str:
         return "inside the facepiece"
     if facts.task.changed_on and sample.sampled_on < facts.task.changed_on:
         return f"before the change of {facts.task.changed_on}"
-    if sample.sampled_on < months_before(facts.on, facts.site.sample_age_months):
+    if facts.on >= months_after(sample.sampled_on, facts.site.sample_age_months):
         return f"older than {facts.site.sample_age_months} months"
     return ""
 
@@ -89,7 +97,7 @@ def _usable(facts: TaskFacts, fact: AgentFact, unit: str) -> tuple[list, Counter
         if not reason and sample.unit != unit:
             value = in_unit(value, sample.unit, fact, target=unit, volume=volume)
             lod = in_unit(lod, sample.unit, fact, target=unit, volume=volume)
-            reason = "" if value > 0 else f"in {sample.unit}, which cannot be converted"
+            reason = "" if value > 0 else f"in {sample.unit}, {CANNOT}"
         if reason:
             left_out[reason] += 1
         else:
@@ -98,7 +106,6 @@ def _usable(facts: TaskFacts, fact: AgentFact, unit: str) -> tuple[list, Counter
 
 
 def _estimate(one: AgentEstimates, kind: str, figures: GroupFigures, index: int) -> Estimate:
-    days = [s.sampled_on for s in one.fact.samples if s.span in SPANS[kind]]
     return Estimate(
         kind=kind,
         binding=one.bindings[kind],
@@ -116,7 +123,7 @@ def _estimate(one: AgentEstimates, kind: str, figures: GroupFigures, index: int)
         ratio95=float(figures.ratio95[index]),
         basis=str(figures.basis[index]),
         flags=figures.flags[index],
-        newest=max(days, default=None),
+        newest=max(one.days[kind], default=None),
     )
 
 
@@ -135,6 +142,7 @@ def estimates(tasks: list[TaskFacts]) -> dict[int, AgentEstimates]:
             for kind in limits:
                 rows = [row for row in usable if row[0].span in SPANS[kind]]
                 one.values[kind] = [(value, sample.is_censored) for sample, value, _ in rows]
+                one.days[kind] = [sample.sampled_on for sample, _, _ in rows]
                 for sample, value, lod in rows:
                     values.append(value)
                     censored.append(sample.is_censored)

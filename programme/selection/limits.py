@@ -9,7 +9,7 @@ from programme.figures import near, unit_sign
 from programme.selection.facts import AgentFact, TaskFacts
 
 # A maximum peak above a ceiling is an allowance, not a second ceiling: it never drives a choice.
-PEAK = "peak"
+PEAK = "maximum peak"
 # A ppm limit is printed for 25 °C and 101.325 kPa in its mg/m3 twin.
 LIST_MOLAR_VOLUME = {"US": 24.45, "GB": 24.06, "EU": 24.06}
 # A total sample below a limit for a finer fraction shows compliance; the converse is not allowed.
@@ -42,9 +42,10 @@ class Binding:
 
 
 def sample_unit(fact: AgentFact) -> str:
-    """The unit in which the group is judged: that of its newest result, else of its kind."""
-    if fact.samples:
-        return fact.samples[-1].unit
+    """The unit in which the group is judged: that of its newest personal result, else its kind's."""
+    personal = [one for one in fact.samples if one.where == "personal"]
+    if personal:
+        return personal[-1].unit
     return "ppm" if fact.form == "gas" else "mg/m3"
 
 
@@ -100,20 +101,45 @@ def _without_twins(
     return [one for one in rows if one[1].unit == unit or one[1].list_code not in printed]
 
 
+def _answered(fact: AgentFact) -> list[ExposureLimit]:
+    """The limits that a sample of this fraction can answer."""
+    return [
+        row
+        for row in fact.limits
+        if row.fraction in ANSWERS[fact.fraction]
+        and not (row.kind == "C" and PEAK in row.note.lower())
+    ]
+
+
+def _of_own_fraction(
+    rows: list[tuple[float, ExposureLimit]], fraction: str
+) -> list[tuple[float, ExposureLimit]]:
+    """Within each list the limit of the sampled fraction; its finer ones where it has none."""
+    exact = {row.list_code for _, row in rows if row.fraction == fraction}
+    return [one for one in rows if one[1].fraction == fraction or one[1].list_code not in exact]
+
+
+def not_comparable(facts: TaskFacts, fact: AgentFact) -> list[ExposureLimit]:
+    """Limits that cannot be put in the unit of the results, without a twin that can."""
+    unit = sample_unit(fact)
+    values = [(row, _compared(row, fact, facts, unit)) for row in _answered(fact)]
+    judged = {(row.list_code, row.kind) for row, value in values if value > 0}
+    # Not `<= 0`: a NaN is what cannot be compared.
+    return [r for r, value in values if not value > 0 and (r.list_code, r.kind) not in judged]
+
+
 def bindings(facts: TaskFacts, fact: AgentFact) -> dict[str, Binding]:
     """The binding limit of each averaging kind there is one for: "TWA", "STEL", "C"."""
     unit = sample_unit(fact)
     by_kind: dict[str, list[tuple[float, ExposureLimit]]] = {}
-    for row in fact.limits:
-        if PEAK in row.note.lower() or row.fraction not in ANSWERS[fact.fraction]:
-            continue
+    for row in _answered(fact):
         value = _compared(row, fact, facts, unit)
         # Not `> 0`: a limit that cannot be converted (NaN) does not take part.
         if value > 0:
             by_kind.setdefault(row.kind, []).append((value, row))
     found = {}
     for kind, rows in by_kind.items():
-        exact = [one for one in rows if one[1].fraction == fact.fraction] or rows
+        exact = _of_own_fraction(rows, fact.fraction)
         value, row = min(_without_twins(exact, unit), key=lambda one: one[0])
         tried = tuple(one[1] for one in sorted(rows, key=lambda one: one[0]))
         binding = Binding(kind, row, value, unit, tried=tried)

@@ -12,7 +12,7 @@ from programme.selection.chain import (
     Working,
     state_of,
 )
-from programme.selection.estimates import AgentEstimates, Estimate
+from programme.selection.estimates import CANNOT, AgentEstimates, Estimate
 from programme.selection.facts import TaskFacts
 from programme.selection.links.words import Finder
 
@@ -85,9 +85,10 @@ def _of_agent(one: AgentEstimates, facts: TaskFacts, find: Finder) -> list[Misma
     usable = sum(e.n for e in one.estimates.values())
     if not one.bindings:
         # Without a limit nothing can be estimated against it; the Limit link says what is missing.
-        if one.fact.samples:
+        if len(one.fact.samples) > one.left_out.total():
             return []
-        return [find.stop("exposure-unknown", f"{name}: not assessed, no air sample.", add, sheet)]
+        says = f"{name}: not assessed, no usable air sample."
+        return [find.stop("exposure-unknown", says, add, sheet)]
     if usable == 0:
         also = f" Left out: {left}." if left else ""
         if any("before the change" in reason for reason in one.left_out):
@@ -107,20 +108,31 @@ def _of_agent(one: AgentEstimates, facts: TaskFacts, find: Finder) -> list[Misma
                 sheet,
             )
         ]
+    return [*_other_unit(one, find, add), *_of_usable(one, find, add, sheet)]
+
+
+def _other_unit(one: AgentEstimates, find: Finder, add: Remedy) -> list[Mismatch]:
+    count = sum(n for reason, n in one.left_out.items() if CANNOT in reason)
+    if not count:
+        return []
+    says = (
+        f"{one.fact.agent.name}: {count} result(s) in a unit that cannot be compared with "
+        f"{unit_sign(one.unit)}."
+    )
+    return [find.fix("sample-unit", says, add, clause="unit-mismatch")]
+
+
+def _of_usable(one: AgentEstimates, find: Finder, *remedies: Remedy) -> list[Mismatch]:
+    name, add = one.fact.agent.name, remedies[0]
+    usable = sum(e.n for e in one.estimates.values())
     found = []
     twa = one.estimates.get("TWA")
     if twa is not None and twa.n == 0:
         says = f"{name}: {usable} short-term results but none over the shift."
-        found.append(find.stop("exposure-unknown", says, add, sheet))
-    elif not any(e.is_known for e in one.estimates.values()):
-        found.append(
-            find.stop(
-                "exposure-unknown",
-                f"{name}: its results allow no estimate.",
-                add,
-                sheet,
-            )
-        )
+        found.append(find.stop("exposure-unknown", says, *remedies))
+    elif one.governing is None:
+        says = f"{name}: its results allow no estimate."
+        found.append(find.stop("exposure-unknown", says, *remedies))
     elif twa is not None and twa.n < FEW:
         says = f"{name}: {twa.n} results; at least {FEW} settle the spread."
         found.append(find.plan("sample-few", says, add))

@@ -4,7 +4,7 @@ from programme.figures import near, unit_sign
 from programme.selection.chain import Link, Remedy, Row, Working, state_of
 from programme.selection.estimates import AgentEstimates
 from programme.selection.facts import TaskFacts
-from programme.selection.limits import KIND_SAYS, Binding
+from programme.selection.limits import KIND_SAYS, Binding, not_comparable
 from programme.selection.links.words import Finder
 
 LONG_SHIFT_H = 8.0
@@ -72,10 +72,25 @@ def judge(facts: TaskFacts, agents: list[AgentEstimates]) -> Link:
             says = f"{agent.name}: no limit for the {one.fact.fraction} fraction in {lists}."
             remedy = Remedy("Add a limit of the site", "exposure:limit_add", (agent.pk,))
             found.append(find.stop("limit-missing", says, remedy))
+        else:
+            found += _other_unit(facts, one, find)
         workings += [_working(one, binding) for binding in one.bindings.values()]
         found += _long_shift(facts, one, find)
     figure, basis = _headline(agents)
     return Link("Limit", state_of(found), figure, basis, tuple(found), tuple(workings))
+
+
+def _other_unit(facts: TaskFacts, one: AgentEstimates, find: Finder) -> list:
+    found = []
+    for row in not_comparable(facts, one.fact):
+        says = (
+            f"{one.fact.agent.name}: the {row.list_code} {KIND_SAYS[row.kind]} of "
+            f"{near(row.value)} {unit_sign(row.unit)} cannot be compared with results in "
+            f"{unit_sign(one.unit)}."
+        )
+        remedy = Remedy("Record a sample in its unit", "exposure:sample_add", ())
+        found.append(find.fix("limit-unit", says, remedy, clause="unit-mismatch"))
+    return found
 
 
 def _long_shift(facts: TaskFacts, one: AgentEstimates, find: Finder) -> list:
