@@ -60,21 +60,34 @@ def demand(facts: TaskFacts, agents: list[AgentEstimates]) -> Demand:
     task, pack = facts.task, facts.pack
     why = "declared immediately dangerous" if task.is_idlh else ""
     for one in agents:
-        governing = one.governing
-        if governing and governing.governing >= _idlh(one, facts):
+        # Any averaging kind may reach it, not only the one with the largest ratio.
+        if any(e.governing >= _idlh(one, facts) for e in one.estimates.values() if e.is_known):
             level = f"{up(_idlh(one, facts))} {unit_sign(one.unit)}"
             why = why or f"{one.fact.agent.name} reaches its IDLH figure, {level}"
-    oxygen = task.oxygen_percent if task.oxygen == "measured" else None
-    low = oxygen is not None and not oxygen >= pack.oxygen.min_percent
-    any_air = low and pack.allows_any_supplied_air(
-        float(oxygen or 0), altitude_m=facts.site.altitude_m
-    )
-    if task.oxygen == "unknown":
-        low, why = True, why or "oxygen not measured where it may be short"
-    elif low and not any_air:
-        why = why or f"oxygen {near(oxygen)} %"
+    low, any_air, short = _short_of_oxygen(facts)
+    why = why or short
     required = None if math.isnan(ratio) else pack.required_apf(ratio)
     return Demand(ratio, ratio95, required, bool(why), low, any_air, why)
+
+
+def _is_oxygen_known(facts: TaskFacts) -> bool:
+    task = facts.task
+    is_measured = task.oxygen == "measured" and task.oxygen_percent is not None
+    return task.oxygen == "ambient" or is_measured
+
+
+def _short_of_oxygen(facts: TaskFacts) -> tuple[bool, bool, str]:
+    """Too low for a filter, any supplied air will do, and why it is immediately dangerous."""
+    task, pack = facts.task, facts.pack
+    if not _is_oxygen_known(facts):
+        return True, False, "oxygen not measured where it may be short"
+    if task.oxygen == "ambient":
+        return False, False, ""
+    oxygen = float(task.oxygen_percent or 0)
+    # Not `<`: NaN is low.
+    low = not oxygen >= pack.oxygen.min_percent
+    any_air = low and pack.allows_any_supplied_air(oxygen, altitude_m=facts.site.altitude_m)
+    return low, any_air, f"oxygen {near(oxygen)} %" if low and not any_air else ""
 
 
 def _workings(facts: TaskFacts, agents: list[AgentEstimates], asked: Demand) -> list[Working]:
@@ -153,7 +166,7 @@ def _found(facts: TaskFacts, agents: list[AgentEstimates], asked: Demand) -> lis
     task = facts.task
     edit = Remedy("Enter the measured oxygen", "exposure:task_edit", (task.pk,))
     found = []
-    if task.oxygen == "unknown" and not task.is_idlh:
+    if not _is_oxygen_known(facts) and not task.is_idlh:
         says = "Oxygen may be short here and was not measured: treated as immediately dangerous."
         found.append(find.stop("oxygen-unknown", says, edit))
     if math.isnan(asked.ratio) and not task.is_idlh:
@@ -165,28 +178,38 @@ def _found(facts: TaskFacts, agents: list[AgentEstimates], asked: Demand) -> lis
         says = f"{up(asked.ratio)} times the limit is above every class of the table."
         remedy = Remedy("Lower the exposure: control the source first")
         found.append(find.stop("ratio-above-classes", says, remedy, clause="apf-low"))
-    found += _unsampled_peaks(agents, find)
-    return found
-
-
-def _unsampled_peaks(agents: list[AgentEstimates], find: Finder) -> list[Mismatch]:
-    found = []
     for one in agents:
-        kinds = [k for k in ("STEL", "C") if k in one.estimates and not one.estimates[k].n]
-        if kinds and one.governing is not None:
-            limits = " and ".join(
-                f"{one.bindings[k].says} {'short term' if k == 'STEL' else 'ceiling'}"
-                for k in kinds
+        found += _unsampled_peak(one, find)
+        if one.fact.agent.idlh_value is not None and math.isnan(_idlh(one, facts)):
+            agent = one.fact.agent
+            says = (
+                f"{agent.name}: its IDLH figure in {agent.idlh_unit or 'no unit'} cannot be "
+                f"compared with results in {unit_sign(one.unit)}."
             )
-            says = f"{one.fact.agent.name}: the limit of {limits} was not judged, no short sample."
-            remedy = Remedy(
-                "Record a short-term sample",
-                "exposure:sample_add",
-                (),
-                f"?task_agent={one.fact.id}",
-            )
-            found.append(find.plan("peak-unsampled", says, remedy, clause="peak"))
+            mend = Remedy("Record a sample in its unit", "exposure:sample_add")
+            found.append(find.fix("idlh-unit", says, mend, clause="unit-mismatch"))
     return found
+
+
+def _unsampled_peak(one: AgentEstimates, find: Finder) -> list[Mismatch]:
+    kinds = [k for k in ("STEL", "C") if k in one.estimates and not one.estimates[k].n]
+    governing = one.governing
+    if not kinds or governing is None:
+        return []
+    limits = " and ".join(
+        f"{one.bindings[k].says} {'short term' if k == 'STEL' else 'ceiling'}" for k in kinds
+    )
+    query = f"?task_agent={one.fact.id}"
+    add = Remedy("Record a short-term sample", "exposure:sample_add", (), query)
+    name = one.fact.agent.name
+    # A peak is never below the average of its shift: under a stricter peak limit the ratio of the
+    # average alone understates what is needed.
+    least = min(one.bindings[k].value for k in kinds)
+    if least < governing.binding.value and governing.governing > least:
+        says = f"{name}: even the shift's average is above the limit of {limits}; no short sample."
+        return [find.stop("peak-unsampled", says, add, clause="peak")]
+    says = f"{name}: the limit of {limits} was not judged, no short sample."
+    return [find.plan("peak-unsampled", says, add, clause="peak")]
 
 
 def judge(facts: TaskFacts, agents: list[AgentEstimates], asked: Demand) -> Link:

@@ -1,60 +1,31 @@
 """Class: does the chosen respirator class and filter type answer all of it?"""
 
 import math
-from collections.abc import Iterable
-from dataclasses import dataclass
 
 from exposure.units import site_molar_volume_l_mol
-from programme.equipment.models import Assembly
-from programme.figures import down, near, unit_sign, up
-from programme.rulepack.pack import RulePack
+from programme.figures import down, near, up
 from programme.rulepack.rows import RespiratorClass
+from programme.rulepack.substance import Substance
 from programme.selection.chain import (
     Choice,
     Link,
     Mismatch,
     Remedy,
-    Row,
-    Working,
     state_of,
 )
 from programme.selection.estimates import AgentEstimates
 from programme.selection.facts import TaskFacts
 from programme.selection.limits import in_unit
 from programme.selection.links.ratio import Demand
+from programme.selection.links.wearable import (
+    Wearable,
+    is_particulate_only,
+    wearable,
+    working,
+)
 from programme.selection.links.words import Finder
 
 LEAST_SCBA_MIN = 30
-
-
-@dataclass(frozen=True)
-class Wearable:
-    """An assembly read against the rule pack: its class and the factor that holds for it here."""
-
-    assembly: Assembly
-    of_class: RespiratorClass | None
-    apf: float
-
-    @property
-    def is_air_purifying(self) -> bool:
-        return self.of_class is None or self.of_class.is_air_purifying
-
-
-def wearable(assembly: Assembly, pack: RulePack, *, is_particulate_only: bool) -> Wearable:
-    """The class of the assembly and its factor; NaN if the pack has no such class."""
-    of_class = pack.find_class(assembly.respirator_class)
-    if of_class is None:
-        return Wearable(assembly, None, math.nan)
-    apf = of_class.apf_when(
-        has_maker_evidence=bool(assembly.maker_evidence.strip()),
-        is_particulate_only=is_particulate_only,
-    )
-    return Wearable(assembly, of_class, float(apf))
-
-
-def is_particulate_only(agents: Iterable[AgentEstimates]) -> bool:
-    """Whether no agent of the task is a gas or vapour."""
-    return all(one.fact.form == "particulate" for one in agents)
 
 
 def is_carcinogen(note: str) -> bool:
@@ -103,6 +74,7 @@ class _Judge:
         self.danger(self.one.of_class)
         self.factor()
         self.eyes(self.one.of_class)
+        self.goggles(self.one.of_class)
         for agent in self.agents:
             self.substance(self.one.of_class, agent)
             if self.one.is_air_purifying:
@@ -201,12 +173,49 @@ class _Judge:
                 f"{of_class.name} leaves the eyes open, and the air irritates them.",
             )
 
+    def goggles(self, of_class: RespiratorClass) -> None:
+        """Substances against which the eyes are always covered."""
+        for one in self.agents:
+            rule = self.pack.substance(one.fact.agent.cas)
+            eyes = rule.eyes if rule else None
+            if eyes is None or eyes.only_if_irritating or of_class.covers_eyes:
+                continue
+            says = f"{one.fact.agent.name}: the eyes have to be covered"
+            more = {"source": eyes.source, "sure": eyes.sure, "clause": "eyes"}
+            if eyes.goggles_suffice:
+                self.plan("eyes-goggles", f"{says}; see that gas-proof goggles are worn.", **more)
+            else:
+                self.fix("eyes-substance", f"{says}, and {of_class.name} leaves them open.", **more)
+
+    def table(self, of_class: RespiratorClass, one: AgentEstimates, rule: Substance) -> None:
+        """A substance's own table of classes by concentration: its row, or one above it."""
+        if not rule.element_hours:
+            return
+        ppm = self.highest_ppm(one)
+        row = rule.hours_at(ppm)
+        name = one.fact.agent.name
+        if row is None:
+            self.stop("substance-table", f"the table of {name} has no row for {up(ppm)} ppm.")
+            return
+        above = [other for other in rule.element_hours if other.max_ppm >= row.max_ppm]
+        if of_class.id not in {known for other in above for known in other.classes}:
+            says = f"{of_class.name} is not in the table of {name} for {up(ppm)} ppm."
+            self.stop("substance-table", says, source=row.source, sure=row.sure)
+
+    def highest_ppm(self, one: AgentEstimates) -> float:
+        """The highest known estimate of any averaging kind, in ppm; NaN if there is none."""
+        known = [e.governing for e in one.estimates.values() if e.is_known]
+        volume = site_molar_volume_l_mol(self.facts.site)
+        highest = max(known, default=math.nan)
+        return in_unit(highest, one.unit, one.fact, target="ppm", volume=volume)
+
     def substance(self, of_class: RespiratorClass, one: AgentEstimates) -> None:
         """What the law adds for single substances."""
         rule = self.pack.substance(one.fact.agent.cas)
         if rule is None:
             return
         name = one.fact.agent.name
+        self.table(of_class, one, rule)
         if rule.inlets and of_class.inlet in rule.inlets.barred:
             says = f"{of_class.name} is barred for {name}."
             self.stop(
@@ -257,7 +266,7 @@ class _Judge:
     def gas(self, one: AgentEstimates) -> None:
         agent, element, pack = one.fact.agent, self.assembly.element, self.pack
         text = agent.us_filter_need if pack.need_scheme == "us" else agent.en_filter_need
-        needs = pack.needs(text)
+        needs = self.needs(text)
         have = tuple(element.gas_elements) if element else ()
         if not have:
             self.stop("gas-missing", f"no cartridge against {agent.name}.")
@@ -272,7 +281,8 @@ class _Judge:
         elif not pack.covers_gas(have, needs=needs, cas=agent.cas):
             says = f"{'+'.join(have)} does not cover {agent.name}, which needs {text}."
             self.stop("gas-type", says)
-        self.low_boiling(one, have)
+        self.low_boiling(one, have, needs)
+        self.label(one, have, needs)
         bar = pack.not_for(agent.cas, have)
         if bar and pack.supplied_air_need not in needs and not bar.allowed_with_schedule:
             self.stop(
@@ -283,17 +293,48 @@ class _Judge:
             )
         self.ceiling(one, have)
 
-    def low_boiling(self, one: AgentEstimates, have: tuple[str, ...]) -> None:
+    def needs(self, text: str) -> tuple[str, ...]:
+        """The needs of an agent; none where the text is not of this pack."""
+        try:
+            return self.pack.needs(text)
+        except ValueError:
+            return ()
+
+    def _answering(self, cas: str, have: tuple[str, ...], needs: tuple[str, ...]) -> list:
+        """The elements at hand that hold the agent; none where they are of the wrong type."""
+        if not self.pack.covers_gas(have, needs=needs, cas=cas):
+            return []
+        rows = [row for row in self.pack.gas_elements if row.id in have]
+        made_for = [row for row in rows if cas and cas in row.agents]
+        return made_for or [row for row in rows if set(needs) & set(row.covers)]
+
+    def low_boiling(
+        self, one: AgentEstimates, have: tuple[str, ...], needs: tuple[str, ...]
+    ) -> None:
         """Vapours of low boiling point pass an ordinary organic-vapour element early."""
         agent, rule = one.fact.agent, self.pack.low_boiling
-        point = agent.boiling_point_c
-        only_ordinary = set(have) <= set(rule.ordinary_elements)
-        if only_ordinary and point is not None and point <= rule.boiling_point_c:
+        answering = {row.id for row in self._answering(agent.cas, have, needs)}
+        if not answering or not answering <= set(rule.ordinary_elements):
+            return
+        point, more = agent.boiling_point_c, {"source": rule.source, "sure": rule.sure}
+        if point is None:
+            says = f"the boiling point of {agent.name} is not recorded: it may pass early."
+            self.plan("boiling-point-unknown", says, clause="gas-low-boiling", **more)
+        elif not point > rule.boiling_point_c:
             says = (
                 f"{agent.name} boils at {near(point)} °C, {near(rule.boiling_point_c)} °C or less: "
                 f"{'+'.join(have)} holds it too briefly."
             )
-            self.stop("gas-low-boiling", says, source=rule.source, sure=rule.sure)
+            self.stop("gas-low-boiling", says, **more)
+
+    def label(self, one: AgentEstimates, have: tuple[str, ...], needs: tuple[str, ...]) -> None:
+        """Elements that are approved only for the gases their label names."""
+        answering = self._answering(one.fact.agent.cas, have, needs)
+        if answering and all(row.label_must_name_agent for row in answering):
+            row = answering[0]
+            says = f"{row.name} will do only if its approval label names {one.fact.agent.name}."
+            more = {"clause": "element-label", "source": row.source, "sure": row.sure}
+            self.plan("element-label", says, **more)
 
     def _made_for(self, cas: str, have: tuple[str, ...]) -> bool:
         rows = [row for row in self.pack.gas_elements if row.id in have]
@@ -307,59 +348,11 @@ class _Judge:
         known = [e for e in one.estimates.values() if e.is_known]
         if not caps or not known:
             return
-        volume = site_molar_volume_l_mol(self.facts.site)
-        highest = max(e.governing for e in known)
-        ppm = in_unit(highest, one.unit, one.fact, target="ppm", volume=volume)
+        ppm = self.highest_ppm(one)
         cap = caps[0]
         if not ppm <= cap.max_ppm:
             says = f"{up(ppm)} ppm of {one.fact.agent.name} is above {down(cap.max_ppm)} ppm."
             self.stop("element-max-use", says, source=cap.source, sure=cap.sure)
-
-
-def _working(facts: TaskFacts, agents: list[AgentEstimates], one: Wearable) -> Working:
-    of_class = one.of_class
-    rows = [Row("Class", of_class.name if of_class else one.assembly.respirator_class)]
-    if of_class:
-        rows.append(Row("APF", down(one.apf), of_class.source, of_class.sure))
-    element = one.assembly.element
-    rows.append(Row("Element", element.name if element else "none"))
-    if element:
-        rows.append(Row("Particulate class", element.particulate_class or "none"))
-        rows.append(Row("Gas elements", ", ".join(element.gas_elements) or "none"))
-    rows.append(Row("Approval", one.assembly.approval_number or "not recorded"))
-    for agent in agents:
-        governing = agent.governing
-        if governing is None or math.isnan(one.apf):
-            continue
-        muc = one.apf * governing.binding.value
-        volume = site_molar_volume_l_mol(facts.site)
-        idlh = agent.fact.agent.idlh_value
-        cap = math.nan
-        if idlh is not None:
-            unit = agent.fact.agent.idlh_unit
-            cap = in_unit(idlh, unit, agent.fact, target=agent.unit, volume=volume)
-        capped = cap < muc and not (of_class and of_class.idlh)
-        text = f"{down(min(muc, cap) if capped else muc)} {unit_sign(agent.unit)}"
-        why = "capped by the IDLH figure" if capped else "APF × limit"
-        clause = facts.pack.clause("muc-capped" if capped else "muc-exceeded")
-        rows.append(
-            Row(
-                f"Maximum use concentration, {agent.fact.agent.name}",
-                f"{text} ({why})",
-                clause.source,
-                clause.sure,
-            )
-        )
-    clause = facts.pack.clause("apf-low")
-    return Working(
-        title=f"{one.assembly.name}: APF {down(one.apf)}",
-        formula="APF ≥ hazard ratio; maximum use concentration = APF × limit, at most IDLH",
-        rows=tuple(rows),
-        source=of_class.source if of_class else clause.source,
-        sure=of_class.sure if of_class else clause.sure,
-        note="An assigned factor holds only inside a running programme: fit, training, upkeep.",
-        figures={"apf": one.apf, "assembly": one.assembly.name},
-    )
 
 
 def judge(facts: TaskFacts, agents: list[AgentEstimates], asked: Demand) -> Link:
@@ -375,9 +368,10 @@ def judge(facts: TaskFacts, agents: list[AgentEstimates], asked: Demand) -> Link
     found = tuple(m for one in worn for m in _Judge(facts, agents, asked, one).all())
     figure, basis = worn[0].assembly.name, f"APF {down(worn[0].apf)}"
     if len(worn) > 1:
-        lowest = min((one.apf for one in worn), default=math.nan)
+        # An unknown factor is not passed over for a known one.
+        lowest = min((one.apf for one in worn), key=lambda apf: (apf == apf, apf))
         figure, basis = f"{len(worn)} assemblies", f"APF {down(lowest)} or more"
-    workings = tuple(_working(facts, agents, one) for one in worn)
+    workings = tuple(working(facts, agents, one) for one in worn)
     return Link("Class", state_of(found), figure, basis, found, workings)
 
 
