@@ -7,7 +7,8 @@ links can be judged without a database, for one task or for a whole site.
 from collections import defaultdict
 from collections.abc import Iterable
 from dataclasses import dataclass, field
-from datetime import date, datetime, timedelta
+from datetime import date, datetime, time, timedelta
+from zoneinfo import ZoneInfo
 
 from django.db.models import Count, F, FloatField, Min, Q, Sum, Value
 from django.db.models.functions import Cast
@@ -180,7 +181,14 @@ def _fit_tests(workers: Q, on: date) -> dict[int, list[FitFact]]:
     return found
 
 
-def _worker_facts(members: list[CrewMember], workers: Q, on: date) -> dict[int, WorkerFact]:
+def _end_of(on: date, site: Site) -> datetime:
+    """The midnight that ends a day at the site."""
+    return datetime.combine(on + timedelta(days=1), time.min, tzinfo=ZoneInfo(site.time_zone))
+
+
+def _worker_facts(
+    members: list[CrewMember], workers: Q, on: date, *, site: Site
+) -> dict[int, WorkerFact]:
     clearances = _newest(
         Clearance.objects.in_force()
         .filter(workers, decided_on__lte=on)
@@ -203,8 +211,7 @@ def _worker_facts(members: list[CrewMember], workers: Q, on: date) -> dict[int, 
             hair.setdefault(note.worker_id, note)
     tests = _fit_tests(workers, on)
     filters: dict[int, dict[int, FilterChange]] = defaultdict(dict)
-    last_moment = on + timedelta(days=1)
-    changes = FilterChange.objects.in_force().filter(workers, fitted_at__date__lt=last_moment)
+    changes = FilterChange.objects.in_force().filter(workers, fitted_at__lt=_end_of(on, site))
     for change in changes.order_by("-fitted_at", "-pk"):
         filters[change.worker_id].setdefault(change.assembly_id, change)
     found = {}
@@ -307,7 +314,7 @@ def gather(site: Site, *, on: date, tasks: list[Task] | None = None) -> list[Tas
         workers = Q(worker__site=site)
     else:
         workers = Q(worker__in=[member.worker_id for member in members])
-    people = _worker_facts(members, workers, on)
+    people = _worker_facts(members, workers, on, site=site)
     crews: dict[int, list[CrewFact]] = defaultdict(list)
     for member in members:
         size = member.size

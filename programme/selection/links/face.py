@@ -122,6 +122,11 @@ class _Wearer:
 
     def _beyond(self, one: Clearance, of_class: RespiratorClass | None) -> str:
         task = self.facts.task
+        limits = (one.heaviest_work, one.max_hours_a_shift)
+        if one.outcome == Clearance.Outcome.ABLE_WITH_LIMITS and not (
+            one.no_negative_pressure or one.no_scba or any(limits)
+        ):
+            return "its limits are not recorded"
         if one.no_negative_pressure and of_class and of_class.is_negative_pressure:
             return "no negative-pressure respirator"
         if one.no_scba and of_class and of_class.family == "scba":
@@ -219,6 +224,13 @@ class _Wearer:
                 )
             self.say(code, says, book)
             return
+        if assembly.facepiece.kind not in protocol.applies_to:
+            says = f"{protocol.name} is no test of a {assembly.facepiece.get_kind_display()}."
+            self.say("fit-protocol", says, book, source=protocol.source, sure=protocol.sure)
+        wanted = sum(one.readings for one in protocol.counted_exercises)
+        if protocol.is_quantitative and test.counted < wanted:
+            says = f"the fit test of {test.tested_on} has {test.counted} of {wanted} figures."
+            self.say("fit-incomplete", says, book)
         expires = months_after(test.tested_on, self._interval("fit"))
         self.until.append(Until(expires, "fit test"))
         if self.last >= expires:
@@ -227,12 +239,15 @@ class _Wearer:
 
     def _level(self, test: FitFact, assembly: Assembly, method: str, book: Remedy) -> None:
         level = self.pack.pass_level(assembly.facepiece.kind, method)
-        if level is None or not level.allowed:
+        is_quantitative = method == "quantitative"
+        # A level that is not known is no permission.
+        has_rule = level is not None and not (is_quantitative and level.min_fit_factor is None)
+        if level is None or not level.allowed or not has_rule:
             says = f"a {method} test does not count on a {assembly.facepiece.get_kind_display()}."
             self.say("fit-method", says, book)
             return
         least = level.min_fit_factor
-        if method == "quantitative" and least is not None:
+        if is_quantitative and least is not None:
             overall, lowest = test.overall_fit_factor, test.lowest_fit_factor
             if overall is None or not overall >= least:
                 says = f"fit factor {down(overall)} is under {down(least)}."
@@ -242,7 +257,8 @@ class _Wearer:
                 self.say("fit-exercise-low", says, book, source=level.source, sure=level.sure)
         of_class = self._of_class(assembly)
         cap = level.cap_for(of_class) if of_class else None
-        if cap is not None and self.asked.ratio > cap:
+        # Not `>`: an unknown ratio is not under the cap.
+        if cap is not None and not self.asked.ratio <= cap:
             says = f"a {method} test supports APF {down(cap)} at most here."
             self.say("apf-cap-fit-method", says, book, source=level.source, sure=level.sure)
 

@@ -83,6 +83,21 @@ class Schedule:
         return _dated(self.facts, member, one, one.whole_shifts)
 
 
+def days_of(shifts_left: float, *, a_week: float) -> int:
+    """Calendar days that so many shifts cover at the least: full weeks, then day after day.
+
+    Three shifts of a five-day week are three days from Monday, not 3 / 5 x 7 = 4.
+
+    Args:
+        shifts_left: may be 0 or less, for a filter that is used up.
+        a_week: shifts a week, above 0.
+    """
+    if not shifts_left > 0:
+        return min(math.floor(shifts_left * DAYS_A_WEEK / a_week), 0)
+    weeks, rest = divmod(shifts_left, a_week)
+    return int(weeks) * DAYS_A_WEEK + math.floor(rest / max(1, math.ceil(a_week / DAYS_A_WEEK)))
+
+
 def _dated(facts: TaskFacts, member: CrewFact, one: ElementSchedule, interval: int) -> MemberFilter:
     find = Finder(facts.pack, "Filter")
     name, pk = member.worker.name, member.worker.id
@@ -94,13 +109,13 @@ def _dated(facts: TaskFacts, member: CrewFact, one: ElementSchedule, interval: i
         missing = find.stop("filter-unknown", says, change, worker_id=pk, worker=name)
         return MemberFilter((missing,), None, "fitted on an unknown day")
     fitted = local_day(last.fitted_at, facts.site)
-    a_day = facts.task.shifts_per_week / DAYS_A_WEEK
+    a_week = facts.task.shifts_per_week
     if last.shifts_used is not None:
         # The count was true on the day it was recorded; shifts go on from there.
         counted_on = local_day(last.recorded_at, facts.site)
-        due = counted_on + timedelta(days=math.floor((interval - last.shifts_used) / a_day))
+        due = counted_on + timedelta(days=days_of(interval - last.shifts_used, a_week=a_week))
     else:
-        due = fitted + timedelta(days=math.floor(interval / a_day))
+        due = fitted + timedelta(days=days_of(interval, a_week=a_week))
     # Not `<`: the due day is the first on which the filter no longer counts.
     if facts.on >= due:
         says = f"{name}: the filter fitted on {fitted} was to be changed by {due}."
@@ -114,17 +129,15 @@ def _dust_mg_m3(agents: list[AgentEstimates]) -> tuple[float, str]:
     entered = [one.fact.dust_load_mg_m3 for one in agents if one.fact.dust_load_mg_m3]
     if entered:
         return max(entered), "dust load entered for the task"
+    dusts = [one for one in agents if one.fact.form != "gas"]
     sums = [
         one.governing.governing
-        for one in agents
-        if one.governing
-        and one.unit == "mg/m3"
-        and one.fact.fraction in COARSE
-        and one.fact.form != "gas"
+        for one in dusts
+        if one.governing and one.unit == "mg/m3" and one.fact.fraction in COARSE
     ]
-    if sums:
+    if sums and len(sums) == len(dusts):
         return sum(sums), "sum of the upper estimates of inhalable or total dust"
-    return math.nan, "only finer fractions were sampled: they understate the load"
+    return math.nan, "not all was sampled as inhalable or total dust, and a part understates it"
 
 
 def _flow_l_min(facts: TaskFacts, assembly: Assembly) -> tuple[float, str]:
@@ -194,8 +207,9 @@ class _Candidates:
             text = "not estimable: area or resistance of the element is not recorded"
             self.rows.append(Row("Breathing resistance", text))
             return
-        kinds = [one.fact.cake for one in self.agents if one.fact.cake] or ["unknown"]
-        cake = loading.CAKE_RESISTANCE[kinds[0]]
+        kinds = {one.fact.cake for one in self.agents if one.fact.cake} or {"unknown"}
+        # Of several deposits the one that clogs first.
+        cake = max((loading.CAKE_RESISTANCE[kind] for kind in kinds), key=lambda c: c.high_per_s)
         made = loading.ParticleFilter(
             area_m2=element.area_cm2 * 1e-4,
             test_flow_m3_s=TEST_FLOW_L_MIN * L_MIN,
@@ -265,8 +279,7 @@ class _Candidates:
                 element.cartridge_life_source,
             )
             based = True
-        for one in gases:
-            based |= self._substance(one)
+        left = [one for one in gases if not self._substance(one)]
         for gas_id in element.gas_elements:
             known = self.pack.find_gas_element(gas_id)
             if known and known.max_hours:
@@ -279,8 +292,8 @@ class _Candidates:
                 )
         if element.has_esli:
             self.rows.append(Row("End-of-service-life indicator", "changes when it shows"))
-        if not based:
-            names = ", ".join(one.fact.agent.name for one in gases)
+        if left and not based:
+            names = ", ".join(one.fact.agent.name for one in left)
             says = (
                 f"{self.assembly.name}: cartridge life against {names} cannot be estimated from "
                 "what is recorded: missing objective data or an end-of-service-life indicator."
@@ -385,6 +398,10 @@ def judge(facts: TaskFacts, made: Schedule, members: tuple[MemberFilter, ...]) -
     if not facts.assigned:
         return Link("Filter", "broken", "no respirator", "nothing to change", ())
     every = list(made.by_assembly.values())
+    filters = [facts.pack.find_class(one.respirator_class) for one in facts.assigned]
+    if not every and any(one is None or one.is_air_purifying for one in filters):
+        # The Class link says which assembly lacks it.
+        return Link("Filter", "broken", "no filter recorded", "nothing to change")
     if not every:
         return Link("Filter", "holds", "no filter", "the air is supplied")
     found = tuple(m for one in every for m in one.mismatches) + tuple(
