@@ -146,6 +146,7 @@ class _Intake:
     def of(
         cls, conc_kg_m3: ArrayLike, minute_volume_m3_s: ArrayLike, efficiency: ArrayLike
     ) -> _Intake:
+        """The three checked, with a trailing axis for the range of lives."""
         return cls(
             require("conc_kg_m3", conc_kg_m3, above=0.0)[..., np.newaxis],
             require("minute_volume_m3_s", minute_volume_m3_s, above=0.0)[..., np.newaxis],

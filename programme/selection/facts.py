@@ -280,6 +280,17 @@ def _agent_facts(site: Site, pack: RulePack, tasks: list[Task], on: date) -> dic
     return found
 
 
+def _assigned(tasks: list[Task], on: date) -> dict[int, list[Assembly]]:
+    found: dict[int, list[Assembly]] = defaultdict(list)
+    for row in (
+        TaskAssembly.objects.filter(task__in=tasks)
+        .active(on)
+        .select_related("assembly__facepiece", "assembly__element")
+    ):
+        found[row.task_id].append(row.assembly)
+    return found
+
+
 def gather(site: Site, *, on: date, tasks: list[Task] | None = None) -> list[TaskFacts]:
     """Read what is known of these tasks (default: all active ones of the site) for one day."""
     whole_site = tasks is None
@@ -292,13 +303,7 @@ def gather(site: Site, *, on: date, tasks: list[Task] | None = None) -> list[Tas
         .filter(Q(withdrawn_on=None) | Q(withdrawn_on__gt=on))
         .select_related("facepiece", "element")
     )
-    assigned: dict[int, list[Assembly]] = defaultdict(list)
-    for row in (
-        TaskAssembly.objects.filter(task__in=tasks)
-        .active(on)
-        .select_related("assembly__facepiece", "assembly__element")
-    ):
-        assigned[row.task_id].append(row.assembly)
+    assigned = _assigned(tasks, on)
     members = list(
         CrewMember.objects.filter(task__in=tasks)
         .active(on)

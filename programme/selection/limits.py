@@ -10,8 +10,6 @@ from programme.selection.facts import AgentFact, TaskFacts
 
 # A maximum peak above a ceiling is an allowance, not a second ceiling: it never drives a choice.
 PEAK = "maximum peak"
-# A ppm limit is printed for 25 °C and 101.325 kPa in its mg/m3 twin.
-LIST_MOLAR_VOLUME = {"US": 24.45, "GB": 24.06, "EU": 24.06}
 # A total sample below a limit for a finer fraction shows compliance; the converse is not allowed.
 ANSWERS = {
     "total": ("total", "inhalable", "thoracic", "respirable"),
@@ -62,13 +60,13 @@ def _compared(row: ExposureLimit, fact: AgentFact, facts: TaskFacts, unit: str) 
     # to ppm at its list's reference state first, then to the site's air.
     if row.unit == unit:
         if unit == "mg/m3" and row.fraction == "vapour" and fact.agent.molar_mass_g_mol:
-            volume = LIST_MOLAR_VOLUME.get(row.list_code[:2], 24.45)
+            volume = facts.pack.list_reference(row.list_code).molar_volume_l_mol
             ppm = in_unit(row.value, unit, fact, target="ppm", volume=volume)
             site = site_molar_volume_l_mol(facts.site)
             return in_unit(ppm, "ppm", fact, target=unit, volume=site)
         return row.value
     if unit == "ppm":
-        volume = LIST_MOLAR_VOLUME.get(row.list_code[:2], 24.45)
+        volume = facts.pack.list_reference(row.list_code).molar_volume_l_mol
     else:
         volume = site_molar_volume_l_mol(facts.site)
     return in_unit(row.value, row.unit, fact, target=unit, volume=volume)

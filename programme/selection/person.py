@@ -15,8 +15,7 @@ from programme.fit.models import FitTest
 from programme.ledger.models import Entry
 from programme.roster.models import Clearance, SealNote, Site, Training, Worker
 from programme.selection.assess import assess_site
-from programme.selection.chain import PLAN, Chain, CrewVerdict, Mismatch
-from programme.selection.links.face import MEDICAL
+from programme.selection.chain import ASK, MEDICAL, PLAN, Chain, CrewVerdict, Mismatch
 
 STATES = {
     "here": "works here",
@@ -31,7 +30,6 @@ READINESS = {
     "free": "on no task",
 }
 _ORDER = ("none", "some", "ready", "free")
-ASK = "Ask the programme administrator."
 HISTORY_ROWS = 60
 
 
@@ -134,7 +132,7 @@ def saying_of(chain: Chain, verdict: CrewVerdict, *, sees_medical: bool) -> Sayi
     """The verdict in words for a reader who may, or may not, see what a clearance limits."""
     against = [m for m in verdict.mismatches if m.severity != PLAN]
     hidden = [m for m in against if m.code.startswith(MEDICAL) and not sees_medical]
-    reasons = [Reason(ASK)] if hidden else []
+    reasons = [Reason(f"{ASK.capitalize()}.")] if hidden else []
     reasons += [Reason(m.says, _mends(m, chain.site_code)) for m in against if m not in hidden]
     if not verdict.may_start:
         reasons += _of_task(chain)

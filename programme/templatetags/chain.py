@@ -3,6 +3,7 @@
 from typing import Any
 
 from django import template
+from django.template.context import Context
 from django.urls import NoReverseMatch, reverse
 
 from programme.drawing import chain as drawing
@@ -36,10 +37,28 @@ def points_svg(picture: Any) -> dict[str, Any]:
     return {"drawn": points(picture), "picture": picture}
 
 
-@register.simple_tag
-def remedy_url(remedy: Any, site: Any) -> str:
-    """The address of a remedy's page, or "" where it has none."""
-    if not remedy.page:
+# What a page asks of the reader's role; a page that is not named here only shows.
+ACT_OF_PAGE = {
+    "equipment:filter_change": "assign",
+    "exposure:limit_add": "limits",
+    "exposure:sample_add": "samples",
+    "exposure:task_agent_add": "tasks",
+    "exposure:task_edit": "tasks",
+    "fit:test_add": "fit_tests",
+    "records:import_start": "samples",
+    "roster:clearance_add": "clearance",
+    "roster:seal_note_add": "roster",
+    "roster:training_add": "roster",
+    "selection:assign": "assign",
+    "selection:crew": "assign",
+}
+
+
+@register.simple_tag(takes_context=True)
+def remedy_url(context: Context, remedy: Any, site: Any) -> str:
+    """The address of a remedy's page, or "" where it has none that this reader may open."""
+    act = ACT_OF_PAGE.get(remedy.page, "")
+    if not remedy.page or (act and not context["can"][act]):
         return ""
     try:
         return reverse(remedy.page, args=[site.code, *remedy.args]) + remedy.query

@@ -286,3 +286,16 @@ def test_action_levels_of_silica_and_lead(us, cas, level_mg_m3, sure):
 def test_silica_and_lead_are_measured_again_after_6_or_3_months(us, cas):
     rule = us.substance(cas).monitoring
     assert (rule.from_action_level_months, rule.above_limit_months) == (6, 3)
+
+
+def test_powered_filters_are_loaded_at_their_blower_flow():
+    """42 CFR 84.175(d): 115 L/min tight-fitting, 170 L/min loose-fitting (verified)."""
+    flow = load("us-2026-1").powered_flow
+    assert (flow.flow_l_min(is_tight=True), flow.flow_l_min(is_tight=False)) == (115, 170)
+
+
+def test_a_list_prints_its_twins_for_24_45_litres_a_mole():
+    """25 degrees Celsius and 760 mm Hg: footnotes of the limits tables, restated (verified)."""
+    pack = load("us-2026-1")
+    assert pack.list_reference("US-PEL").molar_volume_l_mol == 24.45
+    assert pack.list_reference("SITE") == pack.list_reference("US-PEL")

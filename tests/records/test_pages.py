@@ -1,4 +1,6 @@
+import html
 import json
+import re
 
 import pytest
 from django.urls import reverse
@@ -115,3 +117,16 @@ def test_the_api_veils_a_medical_reason_as_the_pages_do(scene):
     address = f"/api/sites/{scene.site.code}/chains/?on=2026-03-02"
     assert "not cleared" not in client(scene).get(address).content.decode()
     assert "not cleared" in client(scene, "coordinator").get(address).content.decode()
+
+
+@pytest.mark.parametrize("role", ["coordinator", "hygienist", "manager", "administrator"])
+def test_no_link_of_today_or_a_task_leads_a_role_to_a_refusal(scene, role):
+    scene.worker.clearances.all().delete()
+    scene.worker.trainings.all().delete()
+    scene.worker.filter_changes.all().delete()
+    scene.limit.delete()
+    one = client(scene, role)
+    for where in ("today/", f"tasks/{scene.task.pk}/"):
+        text = one.get(f"/s/{scene.site.code}/{where}", {"on": "2026-03-02"}).content.decode()
+        for address in set(re.findall(r'href="(/s/[^"#]+)', text)):
+            assert one.get(html.unescape(address)).status_code == 200, address

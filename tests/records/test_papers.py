@@ -64,7 +64,7 @@ def test_a_medical_reason_is_never_printed():
     scene.worker.clearances.update(outcome="not_able")
     printed = words(compliance_summary(scope(scene.site)))
     assert "not cleared" not in printed
-    assert "ask the administrator" in printed
+    assert "ask the programme administrator" in printed
 
 
 def test_a_mark_in_a_name_is_printed_as_typed():

@@ -8,7 +8,7 @@ from django.urls import reverse
 from programme.roster.actions import record
 from programme.roster.models import Clearance
 from programme.selection.chain import HOLDS, LINKS, Chain, CrewVerdict, Link, Mismatch, Remedy
-from programme.selection.person import ASK, saying_of
+from programme.selection.person import saying_of
 from tests.builders import (
     DAY,
     client_for,
@@ -67,7 +67,10 @@ def says_of(saying):
 
 def test_a_reader_without_the_right_is_told_to_ask_where_the_reason_is_medical():
     verdict = make_verdict(mismatches=(MEDICAL, LAPSED))
-    assert says_of(saying_of(make_chain(), verdict, sees_medical=False)) == [ASK, LAPSED.says]
+    assert says_of(saying_of(make_chain(), verdict, sees_medical=False)) == [
+        "Ask the programme administrator.",
+        LAPSED.says,
+    ]
     assert says_of(saying_of(make_chain(), verdict, sees_medical=True)) == [LIMIT, LAPSED.says]
 
 
@@ -157,7 +160,7 @@ def test_a_medical_no_never_shows_its_reason_to_a_manager(crew):
     Clearance.objects.update(outcome="not_able")
     address = url("person", crew.worker_id) + "?on=2026-03-02"
     manager = client_for(make_user("manager")).get(address).content.decode()
-    assert ASK in manager
+    assert "Ask the programme administrator." in manager
     assert "not able" not in manager
     assert "not cleared" not in manager
 

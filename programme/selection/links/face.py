@@ -10,6 +10,7 @@ from programme.roster.months import months_after
 from programme.rulepack.rows import RespiratorClass
 from programme.selection.chain import (
     DUE_SOON,
+    MEDICAL,
     PLAN,
     CrewVerdict,
     Link,
@@ -25,7 +26,6 @@ from programme.selection.links.ratio import Demand
 from programme.selection.links.words import Finder
 
 WORK_ORDER = [choice.value for choice in WorkRate]
-MEDICAL = "medical-"
 
 
 @dataclass(frozen=True)

@@ -25,8 +25,6 @@ from programme.selection.links.words import Finder
 
 L_MIN = 1e-3 / 60
 TEST_FLOW_L_MIN = 85.0
-# Blower flows at which powered filters are tested. Source: 42 CFR 84.175(d) (verified).
-BLOWER_L_MIN = {True: 115.0, False: 170.0}
 DAYS_A_WEEK = 7
 COARSE = {"inhalable", "total"}
 
@@ -140,11 +138,16 @@ def _dust_mg_m3(agents: list[AgentEstimates]) -> tuple[float, str]:
     return math.nan, "not all was sampled as inhalable or total dust, and a part understates it"
 
 
-def _flow_l_min(facts: TaskFacts, assembly: Assembly) -> tuple[float, str]:
+def _flow(facts: TaskFacts, assembly: Assembly) -> tuple[float, Row]:
+    """L/min that load the filter, and the line of the working that says where they are from."""
     of_class = facts.pack.find_class(assembly.respirator_class)
     if of_class is not None and of_class.mode == "powered":
-        return BLOWER_L_MIN[of_class.is_tight], "blower flow of 42 CFR 84.175(d)"
-    return float(WORK_CLASSES[facts.task.work_rate]), "minute volume, common practice"
+        rule = facts.pack.powered_flow
+        flow = rule.flow_l_min(is_tight=of_class.is_tight)
+        return flow, Row("Air drawn through", f"{near(flow)} L/min, blower", rule.source, rule.sure)
+    flow = float(WORK_CLASSES[facts.task.work_rate])
+    says = f"{near(flow)} L/min, minute volume (common practice)"
+    return flow, Row("Air drawn through", says)
 
 
 class _Candidates:
@@ -176,8 +179,8 @@ class _Candidates:
         if element is None or not element.particulate_class or not has_particles:
             return
         dust, whence = _dust_mg_m3(self.agents)
-        flow, flow_whence = _flow_l_min(facts, self.assembly)
-        self.rows.append(Row("Air drawn through", f"{near(flow)} L/min ({flow_whence})"))
+        flow, flow_row = _flow(facts, self.assembly)
+        self.rows.append(flow_row)
         if dust == dust:
             self.rows.append(Row("Dust load", f"{up(dust)} mg/m³ ({whence})"))
             mass = loading.mass_collected_kg(

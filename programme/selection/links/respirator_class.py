@@ -25,8 +25,6 @@ from programme.selection.links.wearable import (
 )
 from programme.selection.links.words import Finder
 
-LEAST_SCBA_MIN = 30
-
 
 def is_carcinogen(note: str) -> bool:
     """Whether a note on cancer names a group that calls for the higher class in doubt.
@@ -124,9 +122,11 @@ class _Judge:
             self.stop("idlh-class", says)
         elif self.asked.needs_idlh_grade and of_class.family == "scba":
             minutes = self.assembly.service_life_min
-            if minutes is None or not minutes >= LEAST_SCBA_MIN:
+            # A pack without a least life still wants the life on record.
+            least = self.pack.idlh.service_life_min or 1
+            if minutes is None or not minutes >= least:
                 have = f"{minutes} min" if minutes else "not recorded"
-                says = f"certified life {have}; at least {LEAST_SCBA_MIN} min."
+                says = f"certified life {have}; at least {least} min."
                 self.stop("idlh-service-life", says, self.edit)
         if self.asked.oxygen_low and of_class.is_air_purifying:
             self.stop(
